@@ -1,0 +1,10 @@
+//! Tube line stages as networks, waves and figures.
+//!
+//! A [`circuit::Stage`] holds a stage's values. The library turns it into a network of named parts and nodes, steps
+//! it as a wave digital filter, and measures it. It reads no files, prints nothing and starts no threads; the program
+//! `platewright` owns every side effect.
+//!
+//! Layers point one way: `wave` builds on `triode` and `circuit`, `analysis` on `wave`; `signal` stands alone.
+
+pub mod circuit;
+pub mod triode;

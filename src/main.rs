@@ -1,0 +1,3 @@
+//! The program `platewright`: files in, files out, what a person sees.
+
+fn main() {}

@@ -1,0 +1,3 @@
+//! Derives the tube library's parameters from the published points.
+
+fn main() {}
