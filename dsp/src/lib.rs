@@ -7,4 +7,7 @@
 //! Layers point one way: `wave` builds on `triode` and `circuit`, `analysis` on `wave`; `signal` stands alone.
 
 pub mod circuit;
+mod lanes;
 pub mod triode;
+
+pub use lanes::{F64x4, Kernel, LANES, Lanes};
