@@ -122,4 +122,9 @@ impl Kernel {
         }
         Kernel::Portable
     }
+
+    /// This form where the CPU runs it, else the portable one.
+    pub fn supported(self) -> Self {
+        if self == Kernel::Avx2 { Kernel::detect() } else { self }
+    }
 }

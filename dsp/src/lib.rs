@@ -8,6 +8,8 @@
 
 pub mod circuit;
 mod lanes;
+mod linear;
 pub mod triode;
+pub mod wave;
 
 pub use lanes::{F64x4, Kernel, LANES, Lanes};

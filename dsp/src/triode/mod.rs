@@ -1,7 +1,9 @@
 //! Triodes: their laws, the tables that make the laws fast, and the tube library.
 
 mod law;
+mod table;
 mod tube;
 
 pub use law::{Currents, DempwolfZoelzer, GridLaw, Koren, Law, TwoSection};
+pub(crate) use table::{LaneCurrents, LawKind, Lookup, TabulatedSection, Tables, TubeNumbers, currents, gather};
 pub use tube::{Capacitances, Heater, Limits, Section, TubeType};

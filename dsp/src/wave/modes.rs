@@ -1,0 +1,129 @@
+//! The wave state turned into the adaptor's real modes.
+//!
+//! A network of resistors and capacitors scatters power-normalised waves by a symmetric matrix, so it has real modes:
+//! in their coordinates a step of the linear part is one multiplication a mode instead of a whole matrix.
+
+use super::adaptor::{Adaptor, incidence, triode_ports};
+use crate::circuit::{Network, Node};
+use crate::linear::Matrix;
+
+/// Modes whose eigenvalue is nearer to −1 than this carry no voltage: the loops that a triode's three capacitances make.
+/// They are left out.
+const NULL_MODE: f64 = 1e-12;
+
+/// One step of a network with `modes` states and `ports` root ports:
+///
+/// - root voltages: v = `root_by_mode`·m + `root_by_signal`·u + `root_constant` + `root_by_current`·i
+/// - next state: m′ = `eigenvalue`·m + `mode_by_signal`·u + `mode_constant` + `mode_by_current`·i
+/// - output: `output_by_mode`·m + `output_by_signal`·u + `output_constant` + `output_by_current`·i
+///
+/// with u the voltage at `in` and i the triodes' grid and plate currents.
+#[derive(Clone, Debug)]
+pub struct Modes {
+    /// Steps a second.
+    pub(crate) rate: f64,
+    pub(crate) eigenvalue: Vec<f64>,
+    pub(crate) mode_by_signal: Vec<f64>,
+    pub(crate) mode_constant: Vec<f64>,
+    pub(crate) mode_by_current: Matrix<f64>,
+    pub(crate) root_by_mode: Matrix<f64>,
+    pub(crate) root_by_signal: Vec<f64>,
+    pub(crate) root_constant: Vec<f64>,
+    pub(crate) root_by_current: Matrix<f64>,
+    pub(crate) output_by_mode: Vec<f64>,
+    pub(crate) output_by_signal: f64,
+    pub(crate) output_constant: f64,
+    pub(crate) output_by_current: Vec<f64>,
+    /// Capacitor waves (volts) from modes, capacitors × modes.
+    pub(crate) wave_by_mode: Matrix<f64>,
+    /// Modes from capacitor waves (volts), modes × capacitors.
+    pub(crate) mode_by_wave: Matrix<f64>,
+    /// Key of each capacitor, in the order of the waves.
+    pub(crate) capacitors: Vec<&'static str>,
+}
+
+impl Modes {
+    /// The modes of `network` at `rate` steps a second; `None` where a node floats.
+    pub fn derive(network: &Network, rate: f64) -> Option<Modes> {
+        Modes::with_output(network, rate, network.place(Node::O)??)
+    }
+
+    fn with_output(network: &Network, rate: f64, output: usize) -> Option<Modes> {
+        let adaptor = Adaptor::derive(network, rate)?;
+        let (eigenvalue, vectors) = adaptor.scattering.clone().symmetric_eigen();
+        let kept: Vec<usize> = (0..eigenvalue.len()).filter(|&k| 1.0 + eigenvalue[k] > NULL_MODE).collect();
+        let vectors = columns(&vectors, &kept);
+        let to_modes = vectors.transposed();
+        let constants: Vec<f64> = (0..network.sources.len()).map(|k| network.constant_volts(k)).collect();
+
+        let triodes = incidence(network.nodes, &triode_ports(network));
+        let nodes_by_mode = adaptor.nodes_by_wave.times(&vectors);
+        let root_by_source = triodes.times(&adaptor.nodes_by_source);
+        let mode_by_source = to_modes.times(&adaptor.reflected_by_source);
+        let mut wave_by_mode = vectors;
+        let mut mode_by_wave = to_modes.clone();
+        for capacitor in 0..adaptor.root_conductance.len() {
+            for mode in 0..kept.len() {
+                wave_by_mode[(capacitor, mode)] /= adaptor.root_conductance[capacitor];
+                mode_by_wave[(mode, capacitor)] *= adaptor.root_conductance[capacitor];
+            }
+        }
+        Some(Modes {
+            rate,
+            eigenvalue: kept.iter().map(|&k| eigenvalue[k]).collect(),
+            mode_by_signal: column(&mode_by_source, 0),
+            mode_constant: mode_by_source.times_vector(&constants),
+            mode_by_current: to_modes.times(&adaptor.reflected_by_current),
+            root_by_mode: triodes.times(&nodes_by_mode),
+            root_by_signal: column(&root_by_source, 0),
+            root_constant: root_by_source.times_vector(&constants),
+            root_by_current: triodes.times(&adaptor.nodes_by_current),
+            output_by_mode: nodes_by_mode.row(output).to_vec(),
+            output_by_signal: adaptor.nodes_by_source[(output, 0)],
+            output_constant: adaptor.nodes_by_source.row(output).iter().zip(&constants).map(|(a, b)| a * b).sum(),
+            output_by_current: adaptor.nodes_by_current.row(output).to_vec(),
+            wave_by_mode,
+            mode_by_wave,
+            capacitors: network.capacitors.iter().map(|c| c.key).collect(),
+        })
+    }
+
+    /// Number of modes, the null ones left out.
+    pub fn count(&self) -> usize {
+        self.eigenvalue.len()
+    }
+
+    /// Number of root ports: two a triode.
+    pub fn ports(&self) -> usize {
+        self.root_constant.len()
+    }
+
+    /// Steps a second.
+    pub fn rate(&self) -> f64 {
+        self.rate
+    }
+
+    /// The state of rest under constant triode currents, with the signal at 0 V.
+    pub(crate) fn resting_state(&self, currents: &[f64]) -> Vec<f64> {
+        (0..self.count())
+            .map(|k| {
+                let driven: f64 = self.mode_by_current.row(k).iter().zip(currents).map(|(a, b)| a * b).sum();
+                (self.mode_constant[k] + driven) / (1.0 - self.eigenvalue[k])
+            })
+            .collect()
+    }
+}
+
+fn column(matrix: &Matrix<f64>, column: usize) -> Vec<f64> {
+    (0..matrix.rows()).map(|row| matrix[(row, column)]).collect()
+}
+
+fn columns(matrix: &Matrix<f64>, kept: &[usize]) -> Matrix<f64> {
+    let mut out = Matrix::zeros(matrix.rows(), kept.len());
+    for row in 0..matrix.rows() {
+        for (to, &from) in kept.iter().enumerate() {
+            out[(row, to)] = matrix[(row, from)];
+        }
+    }
+    out
+}

@@ -1,0 +1,400 @@
+//! Four machines stepped at once: the fast engine.
+//!
+//! A step predicts the root's voltages from the last three, corrects them by one Newton step and takes the currents from
+//! that linearisation, so that Kirchhoff's laws hold exactly whatever the laws' tables say. A lane whose correction was
+//! not small goes on by its own test, so that its bits never depend on its neighbours.
+
+use super::machine::Machine;
+use super::root::{self, RootCounts};
+use crate::lanes::{F64x4, LANES, Lanes};
+use crate::linear::Matrix;
+use crate::triode::{LaneCurrents, LawKind, Tables, TubeNumbers, currents, gather};
+
+/// A correction below this many volts at every port ends a lane's Newton steps.
+pub(crate) const SMALL_CORRECTION: f64 = 1e-3;
+/// Newton steps a lane may take before the damped solver takes over.
+const PLAIN_STEPS: usize = 12;
+/// Volts to which the damped solver works.
+const DAMPED_TOLERANCE: f64 = 1e-6;
+
+/// Coefficients of four lanes; see `Modes` for what each one means.
+#[derive(Clone)]
+struct Coefficients<const PORTS: usize, const MODES: usize> {
+    eigenvalue: [F64x4; MODES],
+    mode_by_signal: [F64x4; MODES],
+    mode_constant: [F64x4; MODES],
+    mode_by_current: [[F64x4; PORTS]; MODES],
+    root_by_mode: [[F64x4; MODES]; PORTS],
+    root_by_signal: [F64x4; PORTS],
+    root_constant: [F64x4; PORTS],
+    root_by_current: [[F64x4; PORTS]; PORTS],
+    output_by_mode: [F64x4; MODES],
+    output_by_signal: F64x4,
+    output_constant: F64x4,
+    output_by_current: [F64x4; PORTS],
+    tubes: [TubeNumbers<F64x4>; 2],
+}
+
+/// What changes from step to step: mode amplitudes, and the root's voltages of the last three steps, newest first.
+#[derive(Clone, Copy)]
+struct State<const PORTS: usize, const MODES: usize> {
+    modes: [F64x4; MODES],
+    volts: [[F64x4; PORTS]; 3],
+}
+
+/// Four lanes of machines of one shape.
+pub(crate) struct Quad<const PORTS: usize, const MODES: usize> {
+    machines: [Machine; LANES],
+    kinds: [LawKind; 2],
+    coefficients: Box<Coefficients<PORTS, MODES>>,
+    state: State<PORTS, MODES>,
+    /// Volts on capacitors that a lane's network has left out.
+    held: [Vec<(&'static str, f64)>; LANES],
+    counts: [RootCounts; LANES],
+}
+
+/// What the engine needs of a quad, whatever its size.
+pub(crate) trait Step: Send {
+    /// Steps through `input`, volts at `in`, into `output`, volts at `o`.
+    fn portable(&mut self, input: &[F64x4], output: &mut [F64x4]);
+    /// The same compiled for AVX2.
+    ///
+    /// # Safety
+    /// The CPU must have AVX2.
+    #[cfg(target_arch = "x86_64")]
+    unsafe fn avx2(&mut self, input: &[F64x4], output: &mut [F64x4]);
+    /// Puts another machine of the same shape into a lane; capacitors keep their charge.
+    fn refill(&mut self, lane: usize, machine: &Machine);
+    /// Back to rest.
+    fn reset(&mut self);
+    /// How the roots of a lane were found so far.
+    fn counts(&self, lane: usize) -> RootCounts;
+    /// Root voltages of a lane after the last step: vgk and vpk, tube after tube.
+    fn root_volts(&self, lane: usize) -> Vec<f64>;
+}
+
+impl<const PORTS: usize, const MODES: usize> Quad<PORTS, MODES> {
+    pub fn new(machines: [Machine; LANES]) -> Self {
+        let kinds = machines[0].shape().kinds;
+        let coefficients = Box::new(coefficients(&machines));
+        let state = State { modes: [F64x4::default(); MODES], volts: [[F64x4::default(); PORTS]; 3] };
+        let mut quad = Quad {
+            machines,
+            kinds,
+            coefficients,
+            state,
+            held: Default::default(),
+            counts: [RootCounts::default(); LANES],
+        };
+        quad.reset();
+        quad
+    }
+
+    #[inline(always)]
+    fn run(&mut self, input: &[F64x4], output: &mut [F64x4]) {
+        let tables: [[&Tables; LANES]; 2] = std::array::from_fn(|tube| {
+            std::array::from_fn(|lane| &*self.machines[lane].tubes[tube.min(PORTS / 2 - 1)].tables)
+        });
+        let mut state = self.state;
+        let c = &*self.coefficients;
+        let mut repeats = Repeats { counts: &mut self.counts, machines: &self.machines };
+        for (&u, out) in input.iter().zip(output.iter_mut()) {
+            *out = step(c, self.kinds, &tables, &mut state, u, &mut repeats);
+        }
+        for counts in repeats.counts.iter_mut() {
+            counts.newton += input.len() as u64;
+        }
+        self.state = state;
+    }
+}
+
+impl<const PORTS: usize, const MODES: usize> Step for Quad<PORTS, MODES> {
+    fn portable(&mut self, input: &[F64x4], output: &mut [F64x4]) {
+        self.run(input, output);
+    }
+
+    #[cfg(target_arch = "x86_64")]
+    #[target_feature(enable = "avx2")]
+    unsafe fn avx2(&mut self, input: &[F64x4], output: &mut [F64x4]) {
+        self.run(input, output);
+    }
+
+    fn refill(&mut self, lane: usize, machine: &Machine) {
+        let old = &self.machines[lane].modes;
+        let amplitudes: Vec<f64> = (0..old.count()).map(|k| self.state.modes[k].0[lane]).collect();
+        let mut waves: Vec<_> =
+            old.capacitors.iter().copied().zip(old.wave_by_mode.times_vector(&amplitudes)).collect();
+        waves.append(&mut self.held[lane]);
+        let new = &machine.modes;
+        let volts_of = |key: &str| waves.iter().find(|(k, _)| *k == key).map_or(0.0, |(_, volts)| *volts);
+        let taken: Vec<f64> = new.capacitors.iter().map(|key| volts_of(key)).collect();
+        let amplitudes = new.mode_by_wave.times_vector(&taken);
+        for k in 0..MODES {
+            self.state.modes[k].0[lane] = amplitudes.get(k).copied().unwrap_or(0.0);
+        }
+        waves.retain(|(key, _)| !new.capacitors.contains(key));
+        self.held[lane] = waves;
+        self.machines[lane] = machine.clone();
+        *self.coefficients = coefficients(&self.machines);
+    }
+
+    fn reset(&mut self) {
+        for lane in 0..LANES {
+            let rest = &self.machines[lane].rest;
+            for k in 0..MODES {
+                self.state.modes[k].0[lane] = rest.state.get(k).copied().unwrap_or(0.0);
+            }
+            for past in &mut self.state.volts {
+                for port in 0..PORTS {
+                    past[port].0[lane] = rest.volts[port];
+                }
+            }
+            self.held[lane].clear();
+            self.counts[lane] = RootCounts::default();
+        }
+    }
+
+    fn counts(&self, lane: usize) -> RootCounts {
+        self.counts[lane]
+    }
+
+    fn root_volts(&self, lane: usize) -> Vec<f64> {
+        self.state.volts[0].iter().map(|v| v.0[lane]).collect()
+    }
+}
+
+fn coefficients<const PORTS: usize, const MODES: usize>(
+    machines: &[Machine; LANES],
+) -> Coefficients<PORTS, MODES> {
+    let each = |f: &dyn Fn(&Machine) -> f64| F64x4([0, 1, 2, 3].map(|lane| f(&machines[lane])));
+    // Absent modes have no amplitude, no drive and no effect.
+    let mode = |k: usize, f: &dyn Fn(&Machine) -> f64| {
+        each(&|m: &Machine| if k < m.modes.count() { f(m) } else { 0.0 })
+    };
+    let tube = |tube: usize| gather([0, 1, 2, 3].map(|lane| &machines[lane].tubes[tube.min(PORTS / 2 - 1)].numbers));
+    use std::array::from_fn;
+    Coefficients {
+        eigenvalue: from_fn(|k| mode(k, &|m| m.modes.eigenvalue[k])),
+        mode_by_signal: from_fn(|k| mode(k, &|m| m.modes.mode_by_signal[k])),
+        mode_constant: from_fn(|k| mode(k, &|m| m.modes.mode_constant[k])),
+        mode_by_current: from_fn(|k| from_fn(|p| mode(k, &|m| m.modes.mode_by_current[(k, p)]))),
+        root_by_mode: from_fn(|p| from_fn(|k| mode(k, &|m| m.modes.root_by_mode[(p, k)]))),
+        root_by_signal: from_fn(|p| each(&|m| m.modes.root_by_signal[p])),
+        root_constant: from_fn(|p| each(&|m| m.modes.root_constant[p])),
+        root_by_current: from_fn(|p| from_fn(|q| each(&|m| m.modes.root_by_current[(p, q)]))),
+        output_by_mode: from_fn(|k| mode(k, &|m| m.modes.output_by_mode[k])),
+        output_by_signal: each(&|m| m.modes.output_by_signal),
+        output_constant: each(&|m| m.modes.output_constant),
+        output_by_current: from_fn(|p| each(&|m| m.modes.output_by_current[p])),
+        tubes: from_fn(tube),
+    }
+}
+
+#[inline(always)]
+fn step<const PORTS: usize, const MODES: usize>(
+    c: &Coefficients<PORTS, MODES>,
+    kinds: [LawKind; 2],
+    tables: &[[&Tables; LANES]; 2],
+    state: &mut State<PORTS, MODES>,
+    u: F64x4,
+    repeats: &mut Repeats<'_>,
+) -> F64x4 {
+    let mut offer = [F64x4::default(); PORTS];
+    let mut volts = [F64x4::default(); PORTS];
+    for p in 0..PORTS {
+        let mut sum = c.root_by_signal[p] * u + c.root_constant[p];
+        for k in 0..MODES {
+            sum = sum + c.root_by_mode[p][k] * state.modes[k];
+        }
+        offer[p] = sum;
+        // A parabola through the last three.
+        let [v0, v1, v2] = [state.volts[0][p], state.volts[1][p], state.volts[2][p]];
+        volts[p] = F64x4::splat(3.0) * (v0 - v1) + v2;
+    }
+    let mut currents = [F64x4::default(); PORTS];
+    let correction = correct(c, kinds, tables, &offer, &mut volts, &mut currents);
+    if !all_below(correction, SMALL_CORRECTION) {
+        let mut root = OpenRoot { offer, volts, currents, correction };
+        repeats.go_on(c, kinds, tables, &mut root);
+        volts = root.volts;
+        currents = root.currents;
+    }
+    let mut output = c.output_by_signal * u + c.output_constant;
+    for k in 0..MODES {
+        output = output + c.output_by_mode[k] * state.modes[k];
+    }
+    for p in 0..PORTS {
+        output = output + c.output_by_current[p] * currents[p];
+    }
+    for k in 0..MODES {
+        let mut next = c.mode_by_signal[k] * u + c.mode_constant[k] + c.eigenvalue[k] * state.modes[k];
+        for p in 0..PORTS {
+            next = next + c.mode_by_current[k][p] * currents[p];
+        }
+        state.modes[k] = next;
+    }
+    state.volts = [volts, state.volts[0], state.volts[1]];
+    output
+}
+
+/// One Newton step in every lane: moves `volts`, leaves the currents of the linearisation there, and returns the largest
+/// move of each lane.
+#[inline(always)]
+fn correct<const PORTS: usize, const MODES: usize>(
+    c: &Coefficients<PORTS, MODES>,
+    kinds: [LawKind; 2],
+    tables: &[[&Tables; LANES]; 2],
+    offer: &[F64x4; PORTS],
+    volts: &mut [F64x4; PORTS],
+    amps: &mut [F64x4; PORTS],
+) -> F64x4 {
+    let first = currents(kinds[0], &c.tubes[0], tables[0], volts[0], volts[1]);
+    amps[0] = first.grid;
+    amps[1] = first.plate;
+    let mut second = None;
+    if PORTS == 4 {
+        let s = currents(kinds[1], &c.tubes[1], tables[1], volts[2], volts[3]);
+        amps[2] = s.grid;
+        amps[3] = s.plate;
+        second = Some(s);
+    }
+    let mut residual = [F64x4::default(); PORTS];
+    for p in 0..PORTS {
+        let mut sum = volts[p] - offer[p];
+        for q in 0..PORTS {
+            sum = sum - c.root_by_current[p][q] * amps[q];
+        }
+        residual[p] = sum;
+    }
+    let mut matrix = [[F64x4::default(); PORTS]; PORTS];
+    for p in 0..PORTS {
+        let k = &c.root_by_current[p];
+        jacobian_row(&first, k[0], k[1], &mut matrix[p], 0);
+        if let Some(second) = &second {
+            jacobian_row(second, k[2], k[3], &mut matrix[p], 2);
+        }
+        matrix[p][p] = matrix[p][p] + F64x4::splat(1.0);
+    }
+    let move_by = solve(&matrix, &residual);
+    let mut largest = F64x4::splat(0.0);
+    for p in 0..PORTS {
+        volts[p] = volts[p] - move_by[p];
+        largest = move_by[p].abs().max(largest);
+    }
+    linearise(&first, amps, &move_by, 0);
+    if let Some(second) = &second {
+        linearise(second, amps, &move_by, 2);
+    }
+    largest
+}
+
+#[inline(always)]
+fn jacobian_row(s: &LaneCurrents<F64x4>, by_grid: F64x4, by_plate: F64x4, row: &mut [F64x4], at: usize) {
+    row[at] = -(by_grid * s.grid_by_vgk + by_plate * s.plate_by_vgk);
+    row[at + 1] = -(by_plate * s.plate_by_vpk);
+}
+
+#[inline(always)]
+fn linearise(s: &LaneCurrents<F64x4>, amps: &mut [F64x4], move_by: &[F64x4], at: usize) {
+    amps[at] = amps[at] - s.grid_by_vgk * move_by[at];
+    amps[at + 1] = amps[at + 1] - (s.plate_by_vgk * move_by[at] + s.plate_by_vpk * move_by[at + 1]);
+}
+
+/// Solves by 2 × 2 blocks: two reciprocal determinants instead of four divisions one after another.
+#[inline(always)]
+fn solve<const PORTS: usize>(m: &[[F64x4; PORTS]; PORTS], f: &[F64x4; PORTS]) -> [F64x4; PORTS] {
+    let mut x = [F64x4::default(); PORTS];
+    let inverse = F64x4::splat(1.0) / (m[0][0] * m[1][1] - m[0][1] * m[1][0]);
+    let upper = |a: F64x4, b: F64x4| {
+        (inverse * (m[1][1] * a - m[0][1] * b), inverse * (m[0][0] * b - m[1][0] * a))
+    };
+    let (g0, g1) = upper(f[0], f[1]);
+    if PORTS == 2 {
+        (x[0], x[1]) = (g0, g1);
+        return x;
+    }
+    let (b02, b12) = upper(m[0][2], m[1][2]);
+    let (b03, b13) = upper(m[0][3], m[1][3]);
+    let below = |r: usize, a: F64x4, b: F64x4, c: F64x4| c - m[r][0] * a - m[r][1] * b;
+    let (s22, s23) = (below(2, b02, b12, m[2][2]), below(2, b03, b13, m[2][3]));
+    let (s32, s33) = (below(3, b02, b12, m[3][2]), below(3, b03, b13, m[3][3]));
+    let (h2, h3) = (below(2, g0, g1, f[2]), below(3, g0, g1, f[3]));
+    let inverse = F64x4::splat(1.0) / (s22 * s33 - s23 * s32);
+    x[2] = inverse * (s33 * h2 - s23 * h3);
+    x[3] = inverse * (s22 * h3 - s32 * h2);
+    x[0] = g0 - b02 * x[2] - b03 * x[3];
+    x[1] = g1 - b12 * x[2] - b13 * x[3];
+    x
+}
+
+#[inline(always)]
+fn all_below(values: F64x4, bound: f64) -> bool {
+    let v = values.0;
+    (v[0] < bound) & (v[1] < bound) & (v[2] < bound) & (v[3] < bound)
+}
+
+/// A root after its first correction.
+struct OpenRoot<const PORTS: usize> {
+    offer: [F64x4; PORTS],
+    volts: [F64x4; PORTS],
+    currents: [F64x4; PORTS],
+    correction: F64x4,
+}
+
+/// The rare rest of a step: lanes whose first correction was not small.
+struct Repeats<'a> {
+    counts: &'a mut [RootCounts; LANES],
+    machines: &'a [Machine; LANES],
+}
+
+impl Repeats<'_> {
+    #[inline(always)]
+    fn go_on<const PORTS: usize, const MODES: usize>(
+        &mut self,
+        c: &Coefficients<PORTS, MODES>,
+        kinds: [LawKind; 2],
+        tables: &[[&Tables; LANES]; 2],
+        root: &mut OpenRoot<PORTS>,
+    ) {
+        for _ in 0..PLAIN_STEPS {
+            let (mut volts, mut amps) = (root.volts, root.currents);
+            let correction = correct(c, kinds, tables, &root.offer, &mut volts, &mut amps);
+            for lane in 0..LANES {
+                if root.correction.0[lane] < SMALL_CORRECTION {
+                    continue;
+                }
+                self.counts[lane].newton += 1;
+                root.correction.0[lane] = correction.0[lane];
+                for p in 0..PORTS {
+                    root.volts[p].0[lane] = volts[p].0[lane];
+                    root.currents[p].0[lane] = amps[p].0[lane];
+                }
+            }
+            if all_below(root.correction, SMALL_CORRECTION) {
+                return;
+            }
+        }
+        for lane in 0..LANES {
+            // Written so that NaN counts as not small.
+            if !(root.correction.0[lane] < SMALL_CORRECTION) {
+                self.damped(lane, root);
+            }
+        }
+    }
+
+    /// The damped solver, from the junction's offer: slow, sure and bounded.
+    #[cold]
+    #[inline(never)]
+    fn damped<const PORTS: usize>(&mut self, lane: usize, root: &mut OpenRoot<PORTS>) {
+        let machine = &self.machines[lane];
+        let offer: [f64; PORTS] = std::array::from_fn(|p| root.offer[p].0[lane]);
+        let resistance: &Matrix<f64> = &machine.modes.root_by_current;
+        let law = |tube: usize, vgk: f64, vpk: f64| machine.tubes[tube].currents(vgk, vpk);
+        let solved = root::solve(resistance, &offer, &offer, DAMPED_TOLERANCE, &law);
+        self.counts[lane].add(solved.counts);
+        for p in 0..PORTS {
+            root.volts[p].0[lane] = solved.volts[p];
+            root.currents[p].0[lane] = solved.amps[p];
+        }
+    }
+}
