@@ -6,6 +6,7 @@
 //!
 //! Layers point one way: `wave` builds on `triode` and `circuit`, `analysis` on `wave`; `signal` stands alone.
 
+pub mod analysis;
 pub mod circuit;
 mod lanes;
 mod linear;

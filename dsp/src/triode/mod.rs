@@ -5,5 +5,5 @@ mod table;
 mod tube;
 
 pub use law::{Currents, DempwolfZoelzer, GridLaw, Koren, Law, TwoSection};
-pub(crate) use table::{LaneCurrents, LawKind, Lookup, TabulatedSection, Tables, TubeNumbers, currents, gather};
+pub(crate) use table::{LaneCurrents, LawKind, Tables, TabulatedSection, TubeNumbers, currents, gather};
 pub use tube::{Capacitances, Heater, Limits, Section, TubeType};

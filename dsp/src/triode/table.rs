@@ -52,8 +52,8 @@ fn spline_slopes(knots: &[f64], values: &[f64], (first, last): (f64, f64)) -> Ve
     let (mut ratio, mut slopes) = (vec![0.0; n], vec![first; n]);
     for k in 1..n - 1 {
         let (left, right) = (width(k - 1), width(k));
-        let chords = 3.0
-            * (right / left * (values[k] - values[k - 1]) + left / right * (values[k + 1] - values[k]));
+        let chords =
+            3.0 * (right / left * (values[k] - values[k - 1]) + left / right * (values[k + 1] - values[k]));
         let pivot = 2.0 * (left + right) - right * ratio[k - 1];
         ratio[k] = left / pivot;
         slopes[k] = (chords - right * slopes[k - 1]) / pivot;
@@ -442,7 +442,8 @@ mod tests {
 
     #[test]
     fn tables_follow_the_computed_laws() {
-        let grid = || (0..=600).flat_map(|g| (0..=97).map(move |p| (-30.0 + 0.0617 * g as f64, 4.3 * p as f64 - 5.0)));
+        let grid =
+            || (0..=600).flat_map(|g| (0..=97).map(move |p| (-30.0 + 0.0617 * g as f64, 4.3 * p as f64 - 5.0)));
         for section in sections() {
             let worst = misses(grid(), &section);
             assert!(worst[0] < 1e-6 && worst[1] < 1e-6, "{:?} {worst:?}", section.law);
@@ -473,7 +474,10 @@ mod tests {
             let t = TabulatedSection::new(&section);
             for (vgk, vpk) in [(80.0, 300.0), (1e6, 1e6), (-1e6, 1e6), (1e6, -1e6), (-1e6, -1e6)] {
                 let c = t.currents(vgk, vpk);
-                assert!(c.plate.is_finite() && c.grid.is_finite() && c.plate_by_vpk.is_finite(), "{vgk} {vpk} {c:?}");
+                assert!(
+                    c.plate.is_finite() && c.grid.is_finite() && c.plate_by_vpk.is_finite(),
+                    "{vgk} {vpk} {c:?}"
+                );
                 assert!(c.grid_by_vgk >= 0.0);
             }
             let (near, far) = (t.currents(70.0, 0.5), t.currents(71.0, 0.5));

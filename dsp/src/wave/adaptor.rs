@@ -5,7 +5,8 @@
 //! adaptors for arbitrary topologies and multiport linear elements", DAFx-15). The triodes' ports stay unadapted: they
 //! see the junction as a voltage behind a resistance matrix, and meet it at the root.
 
-use crate::circuit::{Network, Terminal};
+use crate::circuit::Network;
+use crate::circuit::nodal::{conductances, incidence, source_currents, stamp, triode_ports};
 use crate::linear::Matrix;
 
 /// What the junction makes of incident waves, source voltages and triode currents, all linear.
@@ -26,60 +27,6 @@ pub(crate) struct Adaptor {
     pub nodes_by_source: Matrix<f64>,
     /// Node voltages from triode currents, nodes × triode ports.
     pub nodes_by_current: Matrix<f64>,
-}
-
-/// A matrix that picks port voltages out of node voltages, one row a port (from, to).
-pub(crate) fn incidence(nodes: usize, ports: &[(Terminal, Terminal)]) -> Matrix<f64> {
-    let mut out = Matrix::zeros(ports.len(), nodes);
-    for (row, &(from, to)) in ports.iter().enumerate() {
-        if let Some(node) = from {
-            out[(row, node)] += 1.0;
-        }
-        if let Some(node) = to {
-            out[(row, node)] -= 1.0;
-        }
-    }
-    out
-}
-
-/// The triodes' ports in the order of the root: grid–cathode, plate–cathode, tube after tube.
-pub(crate) fn triode_ports(network: &Network) -> Vec<(Terminal, Terminal)> {
-    network.triodes.iter().flat_map(|t| [(t.grid, t.cathode), (t.plate, t.cathode)]).collect()
-}
-
-/// Adds a conductance between two terminals to a nodal matrix.
-pub(crate) fn stamp<T: crate::linear::Scalar>(matrix: &mut Matrix<T>, from: Terminal, to: Terminal, siemens: T) {
-    for (a, b) in [(from, to), (to, from)] {
-        if let Some(a) = a {
-            matrix[(a, a)] += siemens;
-            if let Some(b) = b {
-                matrix[(a, b)] -= siemens;
-            }
-        }
-    }
-}
-
-/// The nodal conductance matrix of resistors and source resistances.
-pub(crate) fn conductances(network: &Network) -> Matrix<f64> {
-    let mut matrix = Matrix::zeros(network.nodes, network.nodes);
-    for part in &network.resistors {
-        stamp(&mut matrix, part.from, part.to, 1.0 / part.value);
-    }
-    for source in &network.sources {
-        stamp(&mut matrix, source.node, None, 1.0 / source.resistance);
-    }
-    matrix
-}
-
-/// Node currents from source voltages, nodes × sources.
-pub(crate) fn source_currents(network: &Network) -> Matrix<f64> {
-    let mut matrix = Matrix::zeros(network.nodes, network.sources.len());
-    for (column, source) in network.sources.iter().enumerate() {
-        if let Some(node) = source.node {
-            matrix[(node, column)] = 1.0 / source.resistance;
-        }
-    }
-    matrix
 }
 
 impl Adaptor {

@@ -3,8 +3,8 @@
 use super::modes::Modes;
 use super::root::{self, Solved};
 use crate::circuit::{Network, Stage};
-use crate::triode::{Section, TabulatedSection, LawKind};
 use crate::linear::Matrix;
+use crate::triode::{Currents, LawKind, TabulatedSection};
 
 /// Why a stage cannot be stepped.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -91,11 +91,13 @@ impl Machine {
 }
 
 /// The resting state of `modes` under `law`, exactly a fixed point of the step.
-pub(crate) fn rest(modes: &Modes, law: &dyn Fn(usize, f64, f64) -> crate::triode::Currents) -> Option<Rest> {
+pub(crate) fn rest(modes: &Modes, law: &dyn Fn(usize, f64, f64) -> Currents) -> Option<Rest> {
     let (ports, count) = (modes.ports(), modes.count());
     let idle = modes.resting_state(&vec![0.0; ports]);
     let offer: Vec<f64> = (0..ports)
-        .map(|r| modes.root_constant[r] + modes.root_by_mode.row(r).iter().zip(&idle).map(|(a, b)| a * b).sum::<f64>())
+        .map(|r| {
+            modes.root_constant[r] + modes.root_by_mode.row(r).iter().zip(&idle).map(|(a, b)| a * b).sum::<f64>()
+        })
         .collect();
     let mut resistance = Matrix::zeros(ports, ports);
     for row in 0..ports {
@@ -111,9 +113,4 @@ pub(crate) fn rest(modes: &Modes, law: &dyn Fn(usize, f64, f64) -> crate::triode
     let Solved { volts, amps, counts, .. } = root::solve(&resistance, &offer, &offer, 1e-10, law);
     (counts.unresolved == 0)
         .then(|| Rest { state: modes.resting_state(&amps[..ports]), volts: volts[..ports].to_vec() })
-}
-
-/// The computed laws of a network's triodes.
-pub(crate) fn sections(network: &Network) -> Vec<Section> {
-    network.triodes.iter().map(|t| t.section).collect()
 }

@@ -3,7 +3,8 @@
 //! A network of resistors and capacitors scatters power-normalised waves by a symmetric matrix, so it has real modes:
 //! in their coordinates a step of the linear part is one multiplication a mode instead of a whole matrix.
 
-use super::adaptor::{Adaptor, incidence, triode_ports};
+use super::adaptor::Adaptor;
+use crate::circuit::nodal::{incidence, triode_ports};
 use crate::circuit::{Network, Node};
 use crate::linear::Matrix;
 

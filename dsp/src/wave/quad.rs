@@ -163,15 +163,13 @@ impl<const PORTS: usize, const MODES: usize> Step for Quad<PORTS, MODES> {
     }
 }
 
-fn coefficients<const PORTS: usize, const MODES: usize>(
-    machines: &[Machine; LANES],
-) -> Coefficients<PORTS, MODES> {
+fn coefficients<const PORTS: usize, const MODES: usize>(machines: &[Machine; LANES]) -> Coefficients<PORTS, MODES> {
     let each = |f: &dyn Fn(&Machine) -> f64| F64x4([0, 1, 2, 3].map(|lane| f(&machines[lane])));
     // Absent modes have no amplitude, no drive and no effect.
-    let mode = |k: usize, f: &dyn Fn(&Machine) -> f64| {
-        each(&|m: &Machine| if k < m.modes.count() { f(m) } else { 0.0 })
-    };
-    let tube = |tube: usize| gather([0, 1, 2, 3].map(|lane| &machines[lane].tubes[tube.min(PORTS / 2 - 1)].numbers));
+    let mode =
+        |k: usize, f: &dyn Fn(&Machine) -> f64| each(&|m: &Machine| if k < m.modes.count() { f(m) } else { 0.0 });
+    let tube =
+        |tube: usize| gather([0, 1, 2, 3].map(|lane| &machines[lane].tubes[tube.min(PORTS / 2 - 1)].numbers));
     use std::array::from_fn;
     Coefficients {
         eigenvalue: from_fn(|k| mode(k, &|m| m.modes.eigenvalue[k])),
@@ -305,9 +303,7 @@ fn linearise(s: &LaneCurrents<F64x4>, amps: &mut [F64x4], move_by: &[F64x4], at:
 fn solve<const PORTS: usize>(m: &[[F64x4; PORTS]; PORTS], f: &[F64x4; PORTS]) -> [F64x4; PORTS] {
     let mut x = [F64x4::default(); PORTS];
     let inverse = F64x4::splat(1.0) / (m[0][0] * m[1][1] - m[0][1] * m[1][0]);
-    let upper = |a: F64x4, b: F64x4| {
-        (inverse * (m[1][1] * a - m[0][1] * b), inverse * (m[0][0] * b - m[1][0] * a))
-    };
+    let upper = |a: F64x4, b: F64x4| (inverse * (m[1][1] * a - m[0][1] * b), inverse * (m[0][0] * b - m[1][0] * a));
     let (g0, g1) = upper(f[0], f[1]);
     if PORTS == 2 {
         (x[0], x[1]) = (g0, g1);
@@ -375,8 +371,8 @@ impl Repeats<'_> {
             }
         }
         for lane in 0..LANES {
-            // Written so that NaN counts as not small.
-            if !(root.correction.0[lane] < SMALL_CORRECTION) {
+            let small = root.correction.0[lane] < SMALL_CORRECTION;
+            if !small {
                 self.damped(lane, root);
             }
         }

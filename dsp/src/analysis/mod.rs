@@ -1,0 +1,11 @@
+//! Figures of a stage: operating point, small signal, steady state.
+
+mod operating_point;
+mod small_signal;
+mod steady_state;
+mod tone;
+
+pub use operating_point::{Meter, OperatingPoint, PartStress, TubePoint};
+pub use small_signal::{Response, SmallSignal};
+pub use steady_state::{NoSteadyState, Period, harmonics, steady_state};
+pub use tone::Tone;
