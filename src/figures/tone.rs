@@ -1,0 +1,113 @@
+//! Tones and small-signal response.
+
+use platewright_dsp::analysis::{OperatingPoint, Response, SmallSignal, Tone};
+use platewright_dsp::circuit::Network;
+
+use super::{HarmonicFigures, ResponseFigures, ToneFigures, Why};
+
+/// Harmonics measured and summed.
+pub const ORDERS: usize = 10;
+
+/// A tone of `input_rms` volts at `frequency` Hz.
+pub fn tone(network: &Network, frequency: f64, input_rms: f64) -> ToneFigures {
+    match Tone::measure(network, frequency, input_rms, ORDERS) {
+        Ok(tone) => measured(&tone),
+        Err(reason) => silent(frequency, input_rms, &reason.to_string()),
+    }
+}
+
+fn measured(tone: &Tone) -> ToneFigures {
+    let mut figures = ToneFigures {
+        frequency: tone.frequency,
+        input_rms: tone.input_rms,
+        output_fundamental_rms: tone.output_rms(),
+        gain_db: tone.gain_db(),
+        thd_percent: tone.thd_f().map(|thd| 100.0 * thd),
+        thd_r_percent: tone.thd_r().map(|thd| 100.0 * thd),
+        thd_orders: ORDERS as u32,
+        harmonics: (2..=ORDERS).map(|order| harmonic(tone, order)).collect(),
+        why: Why::new(),
+    };
+    if figures.output_fundamental_rms.is_none() {
+        explain(&mut figures, "the fundamental did not settle as the steps were made finer");
+    } else if figures.thd_percent.is_none() {
+        let reason = "no harmonic stands above what double precision keeps";
+        figures.why.extend(["thd_percent", "thd_r_percent"].map(|key| (key.to_owned(), reason.to_owned())));
+    }
+    figures
+}
+
+fn harmonic(tone: &Tone, order: usize) -> HarmonicFigures {
+    let (dbc, phase_deg) = (tone.dbc(order), tone.relative_phase(order));
+    let mut why = Why::new();
+    if dbc.is_none() {
+        let reason = "it did not settle as the steps were made finer";
+        why.extend(["dBc", "phase_deg"].map(|key| (key.to_owned(), reason.to_owned())));
+    }
+    HarmonicFigures { order: order as u32, dbc, phase_deg, why }
+}
+
+fn silent(frequency: f64, input_rms: f64, reason: &str) -> ToneFigures {
+    let none = |order: usize| HarmonicFigures {
+        order: order as u32,
+        dbc: None,
+        phase_deg: None,
+        why: ["dBc", "phase_deg"].map(|key| (key.to_owned(), reason.to_owned())).into(),
+    };
+    let mut figures = ToneFigures {
+        frequency,
+        input_rms,
+        output_fundamental_rms: None,
+        gain_db: None,
+        thd_percent: None,
+        thd_r_percent: None,
+        thd_orders: ORDERS as u32,
+        harmonics: (2..=ORDERS).map(none).collect(),
+        why: Why::new(),
+    };
+    explain(&mut figures, reason);
+    figures
+}
+
+fn explain(figures: &mut ToneFigures, reason: &str) {
+    for key in ["output_fundamental_rms", "gain_dB", "thd_percent", "thd_r_percent"] {
+        figures.why.insert(key.to_owned(), reason.to_owned());
+    }
+}
+
+/// The small-signal response at `frequency` Hz.
+pub fn response(network: &Network, point: &OperatingPoint, frequency: f64) -> ResponseFigures {
+    match SmallSignal::new(network, point).at(frequency) {
+        Some(response) => responded(&response),
+        None => ResponseFigures {
+            frequency,
+            gain_db: None,
+            phase_deg: None,
+            input_impedance: None,
+            output_impedance: None,
+            why: ["gain_dB", "phase_deg", "input_impedance", "output_impedance"]
+                .map(|key| (key.to_owned(), "the network has no solution at this frequency".to_owned()))
+                .into(),
+        },
+    }
+}
+
+fn responded(response: &Response) -> ResponseFigures {
+    let size = response.gain.norm();
+    let (gain_db, phase_deg, why) = if size > 0.0 {
+        let degrees = response.gain.arg().to_degrees();
+        (Some(20.0 * size.log10()), Some(if degrees <= -180.0 { degrees + 360.0 } else { degrees }), Why::new())
+    } else {
+        let reason = "nothing reaches the output";
+        (None, None, ["gain_dB", "phase_deg"].map(|key| (key.to_owned(), reason.to_owned())).into())
+    };
+    let parts = |z: num_complex::Complex64| Some([z.re, z.im]);
+    ResponseFigures {
+        frequency: response.frequency,
+        gain_db,
+        phase_deg,
+        input_impedance: parts(response.input_impedance),
+        output_impedance: parts(response.output_impedance),
+        why,
+    }
+}
