@@ -13,4 +13,6 @@ mod linear;
 pub mod triode;
 pub mod wave;
 
+pub use num_complex::Complex64;
+
 pub use lanes::{F64x4, Kernel, LANES, Lanes};

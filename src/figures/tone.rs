@@ -101,7 +101,7 @@ fn responded(response: &Response) -> ResponseFigures {
         let reason = "nothing reaches the output";
         (None, None, ["gain_dB", "phase_deg"].map(|key| (key.to_owned(), reason.to_owned())).into())
     };
-    let parts = |z: num_complex::Complex64| Some([z.re, z.im]);
+    let parts = |z: platewright_dsp::Complex64| Some([z.re, z.im]);
     ResponseFigures {
         frequency: response.frequency,
         gain_db,

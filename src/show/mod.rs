@@ -1,0 +1,23 @@
+//! Figures as a person reads them in a terminal.
+
+mod bench_sheet;
+mod figures;
+mod side_by_side;
+pub mod units;
+mod warnings;
+
+pub use bench_sheet::bench_sheet;
+pub use figures::{operating_points, responses, tones};
+pub use side_by_side::SideBySide;
+pub use warnings::warnings;
+
+/// Columns that a table may fill.
+pub const WIDTH: usize = 80;
+
+/// What stands wherever the program leads to building.
+pub const CAUTIONS: &str = "\
+These stages run at hundreds of volts, enough to kill. Reservoirs stay charged after
+switch-off: fit bleeders, switch off, wait, and check with a meter before touching.
+One hand, dry, insulated probes; never work alone. Fuse the supply, earth the chassis.
+Local codes and the judgement of a licensed practitioner come before this sheet.
+";
