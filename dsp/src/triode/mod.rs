@@ -2,6 +2,7 @@
 
 mod law;
 mod table;
+pub mod library;
 mod tube;
 
 pub use law::{Currents, DempwolfZoelzer, GridLaw, Koren, Law, TwoSection};
