@@ -10,6 +10,7 @@ pub mod analysis;
 pub mod circuit;
 mod lanes;
 mod linear;
+pub mod signal;
 pub mod triode;
 pub mod wave;
 
