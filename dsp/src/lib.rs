@@ -7,6 +7,7 @@
 //! Layers point one way: `wave` builds on `triode` and `circuit`, `analysis` on `wave`; `signal` stands alone.
 
 pub mod analysis;
+mod chain;
 pub mod circuit;
 mod lanes;
 mod linear;
@@ -16,4 +17,5 @@ pub mod wave;
 
 pub use num_complex::Complex64;
 
+pub use chain::Chain;
 pub use lanes::{F64x4, Kernel, LANES, Lanes};

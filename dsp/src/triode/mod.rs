@@ -1,8 +1,8 @@
 //! Triodes: their laws, the tables that make the laws fast, and the tube library.
 
 mod law;
-mod table;
 pub mod library;
+mod table;
 mod tube;
 
 pub use law::{Currents, DempwolfZoelzer, GridLaw, Koren, Law, TwoSection};
