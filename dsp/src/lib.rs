@@ -11,6 +11,7 @@ mod chain;
 pub mod circuit;
 mod lanes;
 mod linear;
+pub mod portable;
 pub mod signal;
 pub mod triode;
 pub mod wave;

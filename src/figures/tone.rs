@@ -2,6 +2,7 @@
 
 use platewright_dsp::analysis::{OperatingPoint, Response, SmallSignal, Tone};
 use platewright_dsp::circuit::Network;
+use platewright_dsp::portable::{decibels, degrees, magnitude};
 
 use super::{HarmonicFigures, ResponseFigures, ToneFigures, Why};
 
@@ -93,10 +94,9 @@ pub fn response(network: &Network, point: &OperatingPoint, frequency: f64) -> Re
 }
 
 fn responded(response: &Response) -> ResponseFigures {
-    let size = response.gain.norm();
+    let size = magnitude(response.gain);
     let (gain_db, phase_deg, why) = if size > 0.0 {
-        let degrees = response.gain.arg().to_degrees();
-        (Some(20.0 * size.log10()), Some(if degrees <= -180.0 { degrees + 360.0 } else { degrees }), Why::new())
+        (Some(decibels(size)), Some(degrees(response.gain)), Why::new())
     } else {
         let reason = "nothing reaches the output";
         (None, None, ["gain_dB", "phase_deg"].map(|key| (key.to_owned(), reason.to_owned())).into())

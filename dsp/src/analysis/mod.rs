@@ -1,11 +1,13 @@
 //! Figures of a stage: operating point, small signal, steady state.
 
+mod noise;
 mod operating_point;
 mod ratings;
 mod small_signal;
 mod steady_state;
 mod tone;
 
+pub use noise::{Noise, a_weighting, supply_transfer};
 pub use operating_point::{Meter, OperatingPoint, PartStress, TubePoint};
 pub use ratings::{Limit, TubeStress, cold_volts, tube_stresses, tube_type};
 pub use small_signal::{Response, SmallSignal};

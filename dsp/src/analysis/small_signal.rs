@@ -56,6 +56,23 @@ impl<'a> SmallSignal<'a> {
         })
     }
 
+    /// The voltage at `o` for each ampere injected into each node at `frequency` Hz, one entry a node: one solution of the
+    /// transposed equations serves every source of noise and hum. `None` where the matrix is singular.
+    pub(crate) fn transfer_from_nodes(&self, frequency: f64) -> Option<Vec<Complex64>> {
+        let output = self.network.place(Node::O)??;
+        let mut right = vec![Complex64::ZERO; self.network.nodes];
+        right[output] = Complex64::new(1.0, 0.0);
+        self.matrix(frequency, Without::Nothing).transposed().solve_vector(&right)
+    }
+
+    pub(crate) fn network(&self) -> &Network {
+        self.network
+    }
+
+    pub(crate) fn point(&self) -> &OperatingPoint {
+        self.point
+    }
+
     fn solve(&self, matrix: Matrix<Complex64>, node: Terminal, amps: f64) -> Option<Vec<Complex64>> {
         let mut right = vec![Complex64::ZERO; self.network.nodes];
         if let Some(node) = node {

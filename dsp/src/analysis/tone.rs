@@ -4,6 +4,7 @@ use num_complex::Complex64;
 
 use super::steady_state::{NoSteadyState, harmonics, steady_state};
 use crate::circuit::Network;
+use crate::portable::{decibels, degrees, magnitude, ratio};
 
 /// Steps a period to begin with; the trapezoidal rule then reads the tenth harmonic within some 0.005 dB.
 const FIRST_STEPS: usize = 385;
@@ -62,36 +63,37 @@ impl Tone {
     /// Size of harmonic `order` over the fundamental, dB.
     pub fn dbc(&self, order: usize) -> Option<f64> {
         let (h, first) = (self.harmonic(order)?, self.harmonic(1)?);
-        let ratio = h.norm() / first.norm();
-        (ratio > 0.0).then(|| 20.0 * ratio.log10())
+        let over_fundamental = magnitude(h) / magnitude(first);
+        (over_fundamental > 0.0).then(|| decibels(over_fundamental))
     }
 
     /// Phase of harmonic `order` relative to the fundamental, φn − n·φ1, degrees from 0 to 360.
     pub fn relative_phase(&self, order: usize) -> Option<f64> {
         let (h, first) = (self.harmonic(order)?, self.harmonic(1)?);
-        let degrees = (h.arg() - order as f64 * first.arg()).to_degrees().rem_euclid(360.0);
-        Some(if degrees >= 360.0 { 0.0 } else { degrees })
+        let relative = (degrees(h) - order as f64 * degrees(first)).rem_euclid(360.0);
+        // A phase just below 0 may round up to a full turn.
+        Some(if relative >= 360.0 { 0.0 } else { relative })
     }
 
     /// Fundamental at `o`, V rms.
     pub fn output_rms(&self) -> Option<f64> {
-        Some(self.harmonic(1)?.norm() / std::f64::consts::SQRT_2)
+        Some(magnitude(self.harmonic(1)?) / std::f64::consts::SQRT_2)
     }
 
     /// Gain of the fundamental from `in` to `o`, dB.
     pub fn gain_db(&self) -> Option<f64> {
-        Some(20.0 * (self.output_rms()? / self.input_rms).log10())
+        Some(decibels(self.output_rms()? / self.input_rms))
     }
 
     /// THD_F: the root of the summed squares of the harmonics from the second up, over the fundamental (IEC 60268-3).
     pub fn thd_f(&self) -> Option<f64> {
-        Some(self.distortion()? / self.harmonic(1)?.norm())
+        Some(self.distortion()? / magnitude(self.harmonic(1)?))
     }
 
     /// THD_R: the same over fundamental and harmonics together (IEC 60268-3).
     pub fn thd_r(&self) -> Option<f64> {
         let distortion = self.distortion()?;
-        Some(distortion / self.harmonic(1)?.norm().hypot(distortion))
+        Some(distortion / libm::hypot(magnitude(self.harmonic(1)?), distortion))
     }
 
     fn harmonic(&self, order: usize) -> Option<Complex64> {
@@ -116,10 +118,10 @@ fn extrapolated((n, coarse): (usize, &[Complex64]), (m, fine): (usize, &[Complex
 }
 
 fn judge(better: &[Complex64], fine: &[Complex64]) -> Vec<Option<Complex64>> {
-    let floor = better[0].norm() * 10f64.powf(FLOOR_DBC / 20.0);
+    let floor = magnitude(better[0]) * ratio(FLOOR_DBC);
     let judge = |(b, f): (&Complex64, &Complex64)| {
-        let moved = (b - f).norm() <= (10f64.powf(WANTED_DB / 20.0) - 1.0) * b.norm();
-        (moved || b.norm() <= floor).then_some(*b)
+        let settled = magnitude(b - f) <= (ratio(WANTED_DB) - 1.0) * magnitude(*b);
+        (settled || magnitude(*b) <= floor).then_some(*b)
     };
     better.iter().zip(fine).map(judge).collect()
 }
