@@ -176,22 +176,27 @@ fn newton_step<const MODES: usize>(
 }
 
 /// Complex peak amplitudes of harmonics 1…`orders` of one period, sine reference: A·sin(ωt + φ) reads A·e^{jφ}.
+pub fn harmonics(period: &[f64], orders: usize) -> Vec<Complex64> {
+    bins(period, &(1..=orders).collect::<Vec<_>>())
+}
+
+/// Complex peak amplitudes of one period at the given multiples of its frequency, sine reference.
 ///
 /// Direct sums over a table of one period's sines.
-pub fn harmonics(period: &[f64], orders: usize) -> Vec<Complex64> {
+pub fn bins(period: &[f64], multiples: &[usize]) -> Vec<Complex64> {
     let n = period.len();
     let turn = |k: usize| std::f64::consts::TAU * k as f64 / n as f64;
     let table: Vec<(f64, f64)> = (0..n).map(|k| libm::sincos(turn(k))).collect();
-    let bin = |order: usize| {
+    let bin = |multiple: &usize| {
         let (mut sine, mut cosine) = (0.0, 0.0);
         let mut place = 0;
         for value in period {
             let (s, c) = table[place];
             sine += value * s;
             cosine += value * c;
-            place = (place + order) % n;
+            place = (place + multiple) % n;
         }
         Complex64::new(sine, cosine) * (2.0 / n as f64)
     };
-    (1..=orders).map(bin).collect()
+    multiples.iter().map(bin).collect()
 }

@@ -2,19 +2,15 @@
 
 use num_complex::Complex64;
 
+use super::refine::refined;
 use super::steady_state::{NoSteadyState, harmonics, steady_state};
 use crate::circuit::Network;
-use crate::portable::{decibels, degrees, magnitude, ratio};
+use crate::portable::{decibels, degrees, magnitude};
 
 /// Steps a period to begin with; the trapezoidal rule then reads the tenth harmonic within some 0.005 dB.
 const FIRST_STEPS: usize = 385;
-/// Doublings of the steps before a harmonic that still moves is given up.
-const DOUBLINGS: usize = 5;
-/// Most that an extrapolated harmonic may differ from the finest sum it was made of, dB.
-const WANTED_DB: f64 = 0.02;
-/// Harmonics smaller than this beside the fundamental are below what double precision keeps through a period.
-const FLOOR_DBC: f64 = -240.0;
-
+/// Steps a cycle of the highest harmonic to begin with, at least.
+const STEPS_AN_ORDER: usize = 38;
 /// What a sine of one level and frequency becomes.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Tone {
@@ -45,19 +41,8 @@ impl Tone {
             let input = sine(steps, input_rms * std::f64::consts::SQRT_2);
             Ok(harmonics(&steady_state(network, &input, frequency * steps as f64)?.output, orders))
         };
-        let mut steps = FIRST_STEPS.max((orders * 38) | 1);
-        let mut coarse = sums(steps)?;
-        for doubling in 0.. {
-            let finer = 2 * steps - 1;
-            let fine = sums(finer)?;
-            let better = extrapolated((steps, &coarse), (finer, &fine));
-            let judged = judge(&better, &fine);
-            if doubling == DOUBLINGS || judged.iter().all(|h| h.is_some()) {
-                return Ok(Tone { frequency, input_rms, harmonics: judged });
-            }
-            (steps, coarse) = (finer, fine);
-        }
-        unreachable!("the loop returns after its last doubling")
+        let harmonics = refined(FIRST_STEPS.max(orders * STEPS_AN_ORDER), &sums)?;
+        Ok(Tone { frequency, input_rms, harmonics })
     }
 
     /// Size of harmonic `order` over the fundamental, dB.
@@ -109,19 +94,4 @@ impl Tone {
 
 fn sine(steps: usize, peak: f64) -> Vec<f64> {
     (0..steps).map(|k| peak * libm::sin(std::f64::consts::TAU * k as f64 / steps as f64)).collect()
-}
-
-/// Richardson's extrapolation of an error that falls as the square of the step.
-fn extrapolated((n, coarse): (usize, &[Complex64]), (m, fine): (usize, &[Complex64])) -> Vec<Complex64> {
-    let square = (m as f64 / n as f64).powi(2);
-    coarse.iter().zip(fine).map(|(c, f)| (f * square - c) / (square - 1.0)).collect()
-}
-
-fn judge(better: &[Complex64], fine: &[Complex64]) -> Vec<Option<Complex64>> {
-    let floor = magnitude(better[0]) * ratio(FLOOR_DBC);
-    let judge = |(b, f): (&Complex64, &Complex64)| {
-        let settled = magnitude(b - f) <= (ratio(WANTED_DB) - 1.0) * magnitude(*b);
-        (settled || magnitude(*b) <= floor).then_some(*b)
-    };
-    better.iter().zip(fine).map(judge).collect()
 }
