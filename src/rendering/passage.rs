@@ -1,0 +1,211 @@
+//! One recording through every configuration, in blocks.
+
+use std::path::PathBuf;
+
+use platewright_dsp::portable::decibels;
+use platewright_dsp::signal::Oversampling;
+
+use super::lanes::Lanes;
+use super::level::Level;
+use super::progress::Progress;
+use super::{RenderFigures, names};
+use crate::audio_files::{OutputFolder, Recording, SampleFormat, Scratch, StagedFile, WavOutput};
+use crate::cli;
+use crate::failure::Failure;
+use crate::plan::Sound;
+use crate::stage_file::Configuration;
+
+/// Frames that pass together.
+const BLOCK: usize = 8192;
+
+/// A recording on its way.
+pub struct Passage<'a> {
+    configurations: &'a [Configuration],
+    recording: &'a Recording,
+    sound: &'a Sound,
+    oversampling: Oversampling,
+    lanes: Lanes,
+    files: &'a [PathBuf],
+    stated: bool,
+    level: &'a Level,
+}
+
+/// A recording that has passed.
+pub struct Passed<'a> {
+    passage: Passage<'a>,
+    sinks: Vec<Sink>,
+}
+
+/// Where a configuration's volts go.
+struct Sink {
+    target: Target,
+    peak_volts: f64,
+}
+
+enum Target {
+    /// The level is known: straight into the file.
+    File(Box<WavOutput>, f64),
+    /// It waits for the loudest peak.
+    Waiting(Scratch),
+}
+
+impl<'a> Passage<'a> {
+    pub fn new(
+        configurations: &'a [Configuration],
+        recording: &'a Recording,
+        sound: &'a Sound,
+        oversampling: Oversampling,
+        lanes: Lanes,
+        files: &'a [PathBuf],
+        level: &'a Level,
+    ) -> Self {
+        let stated = matches!(level, Level::Stated(_));
+        Passage { configurations, recording, sound, oversampling, lanes, files, stated, level }
+    }
+
+    /// Frames of the output.
+    fn frames(&self) -> u64 {
+        let tail = (self.sound.tail * f64::from(self.recording.sample_rate())).round() as u64;
+        self.recording.frames() + tail
+    }
+
+    fn format(&self) -> SampleFormat {
+        match self.sound.format {
+            cli::SampleFormat::I16 => SampleFormat::I16,
+            cli::SampleFormat::I24 => SampleFormat::I24,
+            cli::SampleFormat::I32 => SampleFormat::I32,
+            cli::SampleFormat::F32 => SampleFormat::F32,
+        }
+    }
+
+    fn wav(&self, folder: &OutputFolder, configuration: usize) -> Result<WavOutput, Failure> {
+        let file = folder.stage(&self.files[configuration])?;
+        let (channels, rate) = (self.recording.channels(), self.recording.sample_rate());
+        Ok(WavOutput::new(file, self.format(), channels, rate, self.frames())?)
+    }
+
+    fn sink(&self, folder: &OutputFolder, configuration: usize) -> Result<Sink, Failure> {
+        let target = if self.stated {
+            let scale = self.level.samples_per_volt(configuration, 0.0);
+            Target::File(Box::new(self.wav(folder, configuration)?), scale)
+        } else {
+            Target::Waiting(Scratch::new_in(folder.path(), self.recording.channels())?)
+        };
+        Ok(Sink { target, peak_volts: 0.0 })
+    }
+
+    /// Steps the whole recording, and silence after it until the last frame has come out.
+    pub fn run(mut self, folder: &OutputFolder, progress: &Progress) -> Result<Passed<'a>, Failure> {
+        let channels = self.recording.channels();
+        let mut sinks: Vec<Sink> =
+            (0..self.configurations.len()).map(|c| self.sink(folder, c)).collect::<Result<_, _>>()?;
+        let mut blocks = self.recording.blocks()?;
+        let mut input = vec![Vec::new(); channels];
+        let mut output = vec![vec![Vec::new(); channels]; self.configurations.len()];
+        let (mut late, mut left) = (self.lanes.latency(), self.frames());
+        while left > 0 {
+            let mut frames = blocks.read(&mut input, BLOCK)?;
+            progress.add((frames * channels * self.configurations.len()) as u64);
+            if frames == 0 {
+                frames = BLOCK.min(usize::try_from(left).unwrap_or(BLOCK) + late);
+                input.iter_mut().for_each(|channel| {
+                    channel.clear();
+                    channel.resize(frames, 0.0);
+                });
+            }
+            self.lanes.process(&input, frames, &mut output);
+            let skipped = late.min(frames);
+            let kept = usize::try_from(left).unwrap_or(usize::MAX).min(frames - skipped);
+            late -= skipped;
+            left -= kept as u64;
+            for (sink, channels) in sinks.iter_mut().zip(&mut output) {
+                channels.iter_mut().for_each(|channel| {
+                    channel.truncate(skipped + kept);
+                    channel.drain(..skipped);
+                });
+                sink.take(channels)?;
+            }
+        }
+        Ok(Passed { passage: self, sinks })
+    }
+}
+
+impl Sink {
+    fn take(&mut self, channels: &mut [Vec<f64>]) -> Result<(), Failure> {
+        self.peak_volts = channels.iter().flatten().fold(self.peak_volts, |peak, volts| peak.max(volts.abs()));
+        match &mut self.target {
+            Target::Waiting(scratch) => scratch.write(channels)?,
+            Target::File(file, scale) => write_scaled(file, channels, *scale)?,
+        }
+        Ok(())
+    }
+}
+
+fn write_scaled(file: &mut WavOutput, channels: &mut [Vec<f64>], scale: f64) -> Result<(), Failure> {
+    channels.iter_mut().flatten().for_each(|volts| *volts *= scale);
+    Ok(file.write(channels)?)
+}
+
+impl Passed<'_> {
+    /// The largest peak of every configuration, V.
+    pub fn peaks(&self) -> impl Iterator<Item = f64> {
+        self.sinks.iter().map(|sink| sink.peak_volts)
+    }
+
+    /// Writes what waited, now that the loudest peak of all is known, and hands over every file with its figures.
+    pub fn finish(
+        self,
+        level: &Level,
+        peak: f64,
+        folder: &OutputFolder,
+        hand_over: &mut dyn FnMut(StagedFile, RenderFigures),
+    ) -> Result<(), Failure> {
+        let Passed { passage, sinks } = self;
+        let channels = passage.recording.channels();
+        for (configuration, sink) in sinks.into_iter().enumerate() {
+            let scale = level.samples_per_volt(configuration, peak);
+            let file = match sink.target {
+                Target::File(file, _) => *file,
+                Target::Waiting(scratch) => {
+                    let mut file = passage.wav(folder, configuration)?;
+                    let mut waiting = scratch.into_reader()?;
+                    let mut planes = vec![Vec::new(); channels];
+                    while waiting.read(&mut planes, BLOCK)? > 0 {
+                        write_scaled(&mut file, &mut planes, scale)?;
+                    }
+                    file
+                }
+            };
+            let (staged, levels) = file.finish()?;
+            let figures = passage.figures(configuration, scale, sink.peak_volts, levels.over_full_scale);
+            hand_over(staged, figures);
+        }
+        Ok(())
+    }
+}
+
+impl Passage<'_> {
+    fn figures(&self, configuration: usize, scale: f64, peak_volts: f64, over_full_scale: u64) -> RenderFigures {
+        let counts = self.lanes.counts(configuration);
+        let channels = self.recording.channels();
+        let steps = (self.frames() + self.lanes.latency() as u64) as f64
+            * (self.oversampling.factor() * channels) as f64;
+        let name = |path: &std::path::Path| path.file_name().map_or_else(String::new, |n| n.to_string_lossy().into());
+        RenderFigures {
+            recording: name(self.recording.path()),
+            configuration: self.configurations[configuration].name.clone(),
+            file: names::shown(&self.files[configuration]),
+            sample_rate: self.recording.sample_rate(),
+            channels,
+            frames: self.frames(),
+            format: format!("{:?}", self.sound.format).to_lowercase(),
+            oversampling: self.oversampling.factor(),
+            full_scale_rms: 1.0 / (scale * std::f64::consts::SQRT_2),
+            peak_volts,
+            peak_dbfs: (peak_volts > 0.0).then(|| decibels(peak_volts * scale)),
+            over_full_scale,
+            newton_per_step: counts.newton as f64 / steps,
+            unresolved_steps: counts.unresolved,
+        }
+    }
+}
