@@ -19,9 +19,9 @@ mod wav_output;
 #[cfg(test)]
 mod tests;
 
-pub use error::{AudioError, RecordingProblem};
+pub use error::AudioError;
 pub use output_folder::{OutputFolder, OutputPlan, StagedFile};
-pub use recording::{BlockReader, Recording};
+pub use recording::Recording;
 pub use samples::SampleFormat;
-pub use scratch::{Scratch, ScratchReader};
-pub use wav_output::{Levels, WavOutput};
+pub use scratch::Scratch;
+pub use wav_output::WavOutput;

@@ -10,7 +10,10 @@ use std::collections::BTreeMap;
 
 use serde::{Deserialize, Serialize};
 
-pub use gather::{Asked, gather};
+pub use gather::{Asked, AskedTone, gather};
+
+use crate::failure::{Failure, WorkError};
+use crate::rendering::RenderFigures;
 
 /// Version of the JSON's shape.
 pub const SCHEMA: u32 = 1;
@@ -27,6 +30,27 @@ pub struct Figures {
     pub title: Option<String>,
     /// In the stage file's order.
     pub configurations: Vec<ConfigurationFigures>,
+    /// Rendered files, where there are any.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub renders: Option<Vec<RenderFigures>>,
+}
+
+impl Figures {
+    /// The figures as JSON, indented.
+    ///
+    /// # Errors
+    /// Never for figures made here; a defect otherwise.
+    pub fn to_json(&self) -> Result<String, Failure> {
+        serde_json::to_string_pretty(self).map_err(|error| {
+            let problem = format!("the figures could not be written as JSON: {error}");
+            WorkError::Failed { problem, remedy: "please report this".to_owned() }.into()
+        })
+    }
+
+    /// Whether anything calls for a warning.
+    pub fn warn(&self) -> bool {
+        self.configurations.iter().any(|c| !c.operating_point.warnings.is_empty())
+    }
 }
 
 /// The figures of one configuration.

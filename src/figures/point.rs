@@ -9,7 +9,8 @@ use platewright_dsp::circuit::{Network, Node, Role, Stage};
 use platewright_dsp::triode::Law;
 
 use super::{
-    MeterFigures, OperatingPointFigures, PartFigures, RatingFigures, ReadingFigures, TubeFigures, WarningFigures, Why,
+    MeterFigures, OperatingPointFigures, PartFigures, RatingFigures, ReadingFigures, TubeFigures, WarningFigures,
+    Why,
 };
 use crate::stage_file::{Configuration, PartRating};
 
@@ -177,8 +178,7 @@ fn beyond_law(stage: &Stage, tube: &TubePoint) -> Option<WarningFigures> {
 }
 
 /// Nodes that a builder can reach with a probe.
-const PROBED: [Node; 9] =
-    [Node::B, Node::P1, Node::K1, Node::G1, Node::X, Node::G2, Node::K2, Node::J, Node::O];
+const PROBED: [Node; 9] = [Node::B, Node::P1, Node::K1, Node::G1, Node::X, Node::G2, Node::K2, Node::J, Node::O];
 
 fn meter(stage: &Stage, network: &Network, point: &OperatingPoint, ohms: f64) -> MeterFigures {
     let reading = |node: Node| {

@@ -113,7 +113,7 @@ impl<'a> Job<'a> {
         Ok((staged, figures))
     }
 
-    fn passage(&self, recording: &'a Recording, files: &'a [PathBuf]) -> Result<Passage<'a>, Failure> {
+    fn passage<'j>(&'j self, recording: &'j Recording, files: &'j [PathBuf]) -> Result<Passage<'j>, Failure> {
         let oversampling = self.oversampling(recording)?;
         let rate = f64::from(recording.sample_rate()) * oversampling.factor() as f64;
         let machines = lanes::machines(self.configurations, rate).map_err(|(index, reason)| {
@@ -150,9 +150,10 @@ pub fn warnings(figures: &[RenderFigures]) -> Vec<String> {
         let kept = if f.format == "f32" { "kept in float" } else { "clipped" };
         format!("{}: {} samples beyond 0 dBFS, {kept}; raise the full scale", f.file, f.over_full_scale)
     });
-    let unresolved = figures.iter().filter(|f| f.unresolved_steps > 0).map(|f| {
-        format!("{}: at {} steps the tubes' equations were not met to 1 µV", f.file, f.unresolved_steps)
-    });
+    let unresolved = figures
+        .iter()
+        .filter(|f| f.unresolved_steps > 0)
+        .map(|f| format!("{}: at {} steps the tubes' equations were not met to 1 µV", f.file, f.unresolved_steps));
     over.chain(unresolved).collect()
 }
 

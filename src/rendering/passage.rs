@@ -188,9 +188,10 @@ impl Passage<'_> {
     fn figures(&self, configuration: usize, scale: f64, peak_volts: f64, over_full_scale: u64) -> RenderFigures {
         let counts = self.lanes.counts(configuration);
         let channels = self.recording.channels();
-        let steps = (self.frames() + self.lanes.latency() as u64) as f64
-            * (self.oversampling.factor() * channels) as f64;
-        let name = |path: &std::path::Path| path.file_name().map_or_else(String::new, |n| n.to_string_lossy().into());
+        let steps =
+            (self.frames() + self.lanes.latency() as u64) as f64 * (self.oversampling.factor() * channels) as f64;
+        let name =
+            |path: &std::path::Path| path.file_name().map_or_else(String::new, |n| n.to_string_lossy().into());
         RenderFigures {
             recording: name(self.recording.path()),
             configuration: self.configurations[configuration].name.clone(),

@@ -16,7 +16,8 @@ const SOLD_VOLTS: [f64; 14] =
 
 /// The sheets of all configurations, the cautions first.
 pub fn bench_sheet(title: Option<&str>, configurations: &[ConfigurationFigures]) -> String {
-    let mut out = format!("BENCH SHEET{}\n\n{CAUTIONS}", title.map(|t| format!(": {}", plain(t))).unwrap_or_default());
+    let mut out =
+        format!("BENCH SHEET{}\n\n{CAUTIONS}", title.map(|t| format!(": {}", plain(t))).unwrap_or_default());
     for configuration in configurations {
         out.push_str(&sheet(configuration));
     }
@@ -38,7 +39,8 @@ fn sheet(configuration: &ConfigurationFigures) -> String {
 
 fn readings(point: &OperatingPointFigures) -> String {
     let Some(meter) = &point.meter else { return String::new() };
-    let mut out = format!("\nTo ground, {} meter            expect      true     read\n", units::ohms(meter.resistance));
+    let mut out =
+        format!("\nTo ground, {} meter            expect      true     read\n", units::ohms(meter.resistance));
     for reading in &meter.readings {
         out.push_str(&format!(
             "  {:<26}{:>11}{:>10}  ______\n",

@@ -211,3 +211,51 @@ pub fn responses(configurations: &[ConfigurationFigures]) -> Option<SideBySide> 
 fn size([re, im]: [f64; 2]) -> f64 {
     re.hypot(im)
 }
+
+/// The few figures that a choice begins with, at the first tone that was measured.
+pub fn at_a_glance(configurations: &[ConfigurationFigures]) -> SideBySide {
+    let mut table = table(configurations);
+    let tone = || configurations.iter().map(|c| c.tones.as_ref().and_then(|t| t.first()));
+    if let Some(first) = tone().flatten().next() {
+        let at = format!("{} at {} rms", units::hertz(first.frequency), units::volts(first.input_rms));
+        table.heading(&format!("At a glance, {at}"));
+    }
+    table.row("gain", tone().map(|t| t.and_then(|t| t.gain_db).map(units::decibels)));
+    table.row("THD_F", tone().map(|t| t.and_then(|t| t.thd_percent).map(units::percent)));
+    let dbc = |order: u32| {
+        tone().map(move |t| {
+            let harmonic = t?.harmonics.iter().find(|h| h.order == order)?;
+            harmonic.dbc.map(|dbc| format!("{dbc:.1} dBc"))
+        })
+    };
+    table.row("H2", dbc(2));
+    table.row("H3", dbc(3));
+    let point = || configurations.iter().map(|c| &c.operating_point);
+    table.row("gain tube", point().map(|p| Some(p.gain.tube.clone())));
+    table.row("  current", point().map(|p| Some(units::amperes(p.gain.plate_current))));
+    table.row("  plate–cathode", point().map(|p| Some(units::volts(p.gain.plate_to_cathode))));
+    table.row("follower", point().map(|p| p.follower.as_ref().map(|f| f.tube.clone())));
+    table.row("  current", point().map(|p| p.follower.as_ref().map(|f| units::amperes(f.plate_current))));
+    table.row("  cathode", point().map(|p| p.follower.as_ref().map(|f| units::volts(f.cathode_to_ground))));
+    table.row("worst rating", point().map(|p| Some(worst(&p.ratings))));
+    table
+}
+
+fn worst(ratings: &[RatingFigures]) -> String {
+    let known = ratings.iter().filter_map(|r| r.used_percent);
+    known.max_by(f64::total_cmp).map_or_else(|| "none stated".to_owned(), |used| format!("{used:.0} %"))
+}
+
+/// Where not to hold a meter, and where to hold it instead; empty where no meter was asked.
+pub fn meter_advice(configurations: &[ConfigurationFigures]) -> String {
+    let mut out = String::new();
+    for configuration in configurations {
+        let readings = configuration.operating_point.meter.iter().flat_map(|m| &m.readings);
+        for reading in readings.filter(|r| r.advice.is_some()) {
+            let advice = reading.advice.as_deref().unwrap_or_default();
+            let name = crate::terminal::plain(&configuration.name);
+            out.push_str(&format!("* {} [{name}]: {advice}\n", reading.node));
+        }
+    }
+    out
+}

@@ -2,12 +2,14 @@
 
 mod bench_sheet;
 mod figures;
+mod renders;
 mod side_by_side;
 pub mod units;
 mod warnings;
 
 pub use bench_sheet::bench_sheet;
-pub use figures::{operating_points, responses, tones};
+pub use figures::{at_a_glance, meter_advice, operating_points, responses, tones};
+pub use renders::renders;
 pub use side_by_side::SideBySide;
 pub use warnings::warnings;
 

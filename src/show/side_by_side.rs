@@ -7,9 +7,9 @@ use crate::terminal::plain;
 /// A row that differs between configurations begins with this.
 const DIFFERS: &str = "≠";
 /// Room for one configuration's figures, in columns of the terminal.
-const COLUMN: usize = 15;
-/// Room for a row's label.
-const LABEL: usize = 19;
+const COLUMN: usize = 13;
+/// Room for the mark and a row's label.
+const LABEL: usize = 22;
 
 /// A table whose columns are configurations.
 #[derive(Clone, Debug, Default)]
@@ -46,7 +46,7 @@ impl SideBySide {
 
     /// The table in `width` columns of a terminal: as many configurations side by side as fit, the rest below.
     pub fn render(&self, width: usize) -> String {
-        let beside = (width.saturating_sub(LABEL + 2) / (COLUMN + 1)).max(1);
+        let beside = (width.saturating_sub(LABEL) / (COLUMN + 1)).max(1);
         let several = self.names.len() > 1;
         let pages = self.names.len().div_ceil(beside).max(1);
         let page = |page: usize| {
@@ -62,24 +62,30 @@ impl SideBySide {
 
     fn page(&self, columns: std::ops::Range<usize>, several: bool) -> String {
         let mut table = Table::new();
-        table.load_preset(presets::NOTHING).set_content_arrangement(ContentArrangement::Disabled);
+        table.load_style(presets::NOTHING).set_content_arrangement(ContentArrangement::Disabled);
         let mut header = vec![Cell::new(""), Cell::new("")];
-        header.extend(self.names[columns.clone()].iter().map(|name| {
-            Cell::new(wrapped(name, COLUMN)).set_alignment(CellAlignment::Right)
-        }));
+        header.extend(
+            self.names[columns.clone()]
+                .iter()
+                .map(|name| Cell::new(wrapped(name, COLUMN)).set_alignment(CellAlignment::Right)),
+        );
         table.set_header(header);
         for row in &self.rows {
             match row {
                 Row::Heading(text) => table.add_row(vec![Cell::new(""), Cell::new(text)]),
                 Row::Figures(label, cells) => {
                     let differs = several && cells.iter().any(|cell| cell != &cells[0]);
-                    let mut line = vec![Cell::new(if differs { DIFFERS } else { "" }), Cell::new(format!("  {label}"))];
+                    let mut line =
+                        vec![Cell::new(if differs { DIFFERS } else { "" }), Cell::new(format!("  {label}"))];
                     let figures = cells[columns.clone()].iter();
                     line.extend(figures.map(|cell| Cell::new(cell).set_alignment(CellAlignment::Right)));
                     table.add_row(line)
                 }
             };
         }
+        table.column_iter_mut().for_each(|column| {
+            column.set_padding((0, 1));
+        });
         let text = table.trim_fmt();
         text + "\n"
     }

@@ -1,0 +1,113 @@
+//! `platewright compare`: all figures of every configuration, their sound, and the report.
+
+use std::path::PathBuf;
+
+use crate::audio_files::{OutputPlan, Recording};
+use crate::failure::{Failure, Outcome};
+use crate::figures::{Asked, AskedTone, Figures, gather};
+use crate::plan::{self, ComparePlan};
+use crate::rendering::{self, Job};
+use crate::stage_file::StageFile;
+use crate::{show, terminal};
+
+/// Figures and curves, as a program reads them.
+const REPORT: &str = "report.json";
+/// The same in a few lines of text.
+const SUMMARY: &str = "summary.txt";
+/// Tones of the comparison, Hz.
+const TONES: [f64; 3] = [1000.0, 100.0, 10_000.0];
+/// Frequencies of the response, Hz.
+const FREQUENCIES: [f64; 7] = [5.0, 20.0, 100.0, 1000.0, 10_000.0, 20_000.0, 100_000.0];
+
+/// Runs the command.
+///
+/// # Errors
+/// [`Failure`] where an input is wrong, an output cannot be written, or the user interrupts.
+pub fn run(plan: &ComparePlan) -> Result<Outcome, Failure> {
+    let file = super::stage(&plan.stage)?;
+    let recordings = super::recordings(&plan.play)?;
+    let inputs: Vec<_> = plan.play.iter().chain([&plan.stage]).cloned().collect();
+    let comparison = Comparison {
+        file: &file,
+        recordings: &recordings,
+        inputs: &inputs,
+        extras: &[],
+        into: &plan.into,
+        level: plan.level,
+        sound: &plan.sound,
+    };
+    comparison.run(plan.figures)
+}
+
+/// Everything a comparison needs, its inputs checked.
+pub struct Comparison<'a> {
+    /// The stage.
+    pub file: &'a StageFile,
+    /// What is played.
+    pub recordings: &'a [Recording],
+    /// Files that no output may overwrite.
+    pub inputs: &'a [PathBuf],
+    /// Files to write beside the results, by name below the folder.
+    pub extras: &'a [(&'a str, &'a [u8])],
+    /// Where the results go.
+    pub into: &'a plan::Into,
+    /// Level of the figures, V rms; none is a quarter of full scale.
+    pub level: Option<f64>,
+    /// How sound is rendered.
+    pub sound: &'a plan::Sound,
+}
+
+impl Comparison<'_> {
+    /// Measures, renders, writes and prints.
+    ///
+    /// # Errors
+    /// [`Failure`] where an output cannot be written or the user interrupts.
+    pub fn run(&self, printed: plan::Figures) -> Result<Outcome, Failure> {
+        let job = Job::new(&self.file.configurations, self.recordings, self.sound, super::kernel())?;
+        let mut files: Vec<PathBuf> = job.files().cloned().collect();
+        files.extend([REPORT, SUMMARY].map(PathBuf::from));
+        files.extend(self.extras.iter().map(|(name, _)| PathBuf::from(name)));
+        let outputs = OutputPlan::check(&self.into.folder, self.into.replace, &files, self.inputs)?;
+        let mut figures = gather(self.file, &self.asked())?;
+
+        let folder = outputs.create()?;
+        let (mut staged, renders) = job.run(&folder)?;
+        let warnings = rendering::warnings(&renders);
+        let tables = summary(&figures, &show::renders(&renders));
+        figures.renders = Some(renders);
+        staged.push(folder.stage_contents(REPORT, (figures.to_json()? + "\n").as_bytes())?);
+        staged.push(folder.stage_contents(SUMMARY, self.summary_file(&figures, &tables).as_bytes())?);
+        for (name, contents) in self.extras {
+            staged.push(folder.stage_contents(name, contents)?);
+        }
+        folder.commit(staged)?;
+
+        for warning in &warnings {
+            terminal::message(&format!("warning: {warning}"));
+        }
+        super::print_figures(&figures, printed.json, &tables)?;
+        terminal::message(&format!("results in {}", terminal::path(&self.into.folder)));
+        Ok(Outcome::of(printed.strict, figures.warn() || !warnings.is_empty()))
+    }
+
+    fn asked(&self) -> Asked {
+        let tone = |frequency| AskedTone { frequency, level: self.level };
+        Asked { tones: Some(TONES.map(tone).to_vec()), frequencies: Some(FREQUENCIES.to_vec()), meter_ohms: None }
+    }
+
+    fn summary_file(&self, figures: &Figures, tables: &[String]) -> String {
+        let title = figures.title.as_deref().map(|t| format!("{}\n\n", terminal::plain(t))).unwrap_or_default();
+        let warnings = show::warnings(&figures.configurations, false);
+        format!("{title}{warnings}{}\n{}", tables.join("\n"), show::CAUTIONS)
+    }
+}
+
+fn summary(figures: &Figures, renders: &str) -> Vec<String> {
+    let configurations = &figures.configurations;
+    [show::at_a_glance(configurations).into(), show::tones(configurations), show::responses(configurations)]
+        .into_iter()
+        .flatten()
+        .map(|table| table.render(show::WIDTH))
+        .chain([renders.to_owned()])
+        .collect()
+}
