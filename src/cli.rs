@@ -1,0 +1,203 @@
+//! The arguments alone: what may be written on the command line, and the help that explains it.
+
+use std::path::PathBuf;
+
+use clap::{Args, Parser, Subcommand, ValueEnum};
+
+/// Bench figures, rendered sound and honest comparisons of triode line stages, before they are built.
+#[derive(Debug, Parser)]
+#[command(name = "platewright", version, about, long_about = None, disable_help_subcommand = true)]
+#[command(after_help = "\
+A first look, without any file:   platewright demo --into out
+A stage of your own:              platewright new stage.toml
+The main job:                     platewright compare stage.toml --play take.wav --into out")]
+pub struct Arguments {
+    /// What to do.
+    #[command(subcommand)]
+    pub command: Command,
+}
+
+/// The commands.
+#[derive(Debug, Subcommand)]
+pub enum Command {
+    /// Write a commented stage file to edit
+    #[command(after_help = "Example:  platewright new stage.toml")]
+    New(NewArguments),
+    /// Print where every configuration biases: volts, milliamps, watts, margins
+    #[command(after_help = "\
+Example:  platewright bias stage.toml
+          platewright bias stage.toml --meter 10M --sheet")]
+    Bias(BiasArguments),
+    /// Measure gain, harmonics and response of every configuration
+    #[command(after_help = "\
+Example:  platewright measure stage.toml --tone 1000:0.5 --frequencies 20,1k,20k
+          platewright measure stage.toml --tone 100:0.5 --tone 1k:0.5 --json")]
+    Measure(MeasureArguments),
+    /// Render recordings through every configuration
+    #[command(after_help = "\
+Example:  platewright render stage.toml --play take.wav --into out
+          platewright render stage.toml --play a.wav --play b.wav --into out --format f32")]
+    Render(RenderArguments),
+    /// Compare every configuration: all figures, renders and the report
+    #[command(after_help = "Example:  platewright compare stage.toml --play take.wav --into out")]
+    Compare(CompareArguments),
+    /// Compare the built-in stage on the built-in recording: needs no file
+    #[command(after_help = "Example:  platewright demo --into out")]
+    Demo(DemoArguments),
+}
+
+/// Arguments of `new`.
+#[derive(Debug, Args)]
+pub struct NewArguments {
+    /// The file to write; one that exists is never overwritten
+    #[arg(value_name = "FILE")]
+    pub file: PathBuf,
+}
+
+/// Arguments of `bias`.
+#[derive(Debug, Args)]
+pub struct BiasArguments {
+    /// The stage file
+    #[arg(value_name = "STAGE")]
+    pub stage: PathBuf,
+    /// Solve again for each node with a meter of this resistance attached, such as 10M
+    #[arg(long, value_name = "OHMS")]
+    pub meter: Option<String>,
+    /// Print a bench sheet for the stage once built, with the cautions
+    #[arg(long, conflicts_with = "json")]
+    pub sheet: bool,
+    #[command(flatten)]
+    pub figures: FigureArguments,
+}
+
+/// Arguments of `measure`.
+#[derive(Debug, Args)]
+pub struct MeasureArguments {
+    /// The stage file
+    #[arg(value_name = "STAGE", required = true)]
+    pub stage: Option<PathBuf>,
+    /// Tones to measure harmonics at, frequency:volts (V rms at the input); repeat it, or separate them by commas
+    #[arg(long = "tone", value_name = "F:V", num_args = 1..)]
+    pub tones: Vec<String>,
+    /// Frequencies to measure gain, phase and impedances at, separated by commas
+    #[arg(long, value_name = "F,F…", num_args = 1..)]
+    pub frequencies: Vec<String>,
+    /// Level of everything that does not name its own, V rms at the input [default: a quarter of source.full_scale]
+    #[arg(long, value_name = "V")]
+    pub level: Option<String>,
+    #[command(flatten)]
+    pub figures: FigureArguments,
+}
+
+/// Arguments of `render`.
+#[derive(Debug, Args)]
+pub struct RenderArguments {
+    /// The stage file
+    #[arg(value_name = "STAGE")]
+    pub stage: PathBuf,
+    #[command(flatten)]
+    pub play: PlayArguments,
+    #[command(flatten)]
+    pub into: IntoArguments,
+    #[command(flatten)]
+    pub sound: SoundArguments,
+    #[command(flatten)]
+    pub figures: FigureArguments,
+}
+
+/// Arguments of `compare`.
+#[derive(Debug, Args)]
+pub struct CompareArguments {
+    /// The stage file
+    #[arg(value_name = "STAGE")]
+    pub stage: PathBuf,
+    #[command(flatten)]
+    pub play: PlayArguments,
+    #[command(flatten)]
+    pub into: IntoArguments,
+    /// Level of the figures, V rms at the input [default: a quarter of source.full_scale]
+    #[arg(long, value_name = "V")]
+    pub level: Option<String>,
+    #[command(flatten)]
+    pub sound: SoundArguments,
+    #[command(flatten)]
+    pub figures: FigureArguments,
+}
+
+/// Arguments of `demo`.
+#[derive(Debug, Args)]
+pub struct DemoArguments {
+    #[command(flatten)]
+    pub into: IntoArguments,
+    #[command(flatten)]
+    pub figures: FigureArguments,
+}
+
+/// How figures are handed over.
+#[derive(Clone, Copy, Debug, Args)]
+pub struct FigureArguments {
+    /// Print the figures as JSON on standard output, and nothing else there
+    #[arg(long)]
+    pub json: bool,
+    /// End with exit code 3 where anything calls for a warning
+    #[arg(long)]
+    pub strict: bool,
+}
+
+/// What to play.
+#[derive(Debug, Args)]
+pub struct PlayArguments {
+    /// A recording to play through the stage (WAV); repeat it for more
+    #[arg(long = "play", value_name = "FILE", required = true)]
+    pub files: Vec<PathBuf>,
+}
+
+/// Where results go.
+#[derive(Debug, Args)]
+pub struct IntoArguments {
+    /// The folder for the results; made where it is missing
+    #[arg(long = "into", value_name = "DIR")]
+    pub folder: PathBuf,
+    /// Write into a folder that holds something already: files of our own names are replaced, others left alone
+    #[arg(long)]
+    pub replace: bool,
+}
+
+/// How sound is rendered and written.
+#[derive(Debug, Args)]
+pub struct SoundArguments {
+    /// Sample format of the files
+    #[arg(long, value_name = "FORMAT", default_value = "i24")]
+    pub format: SampleFormat,
+    /// Steps a sample, a power of two to 64 [default: the fewest that reach 352.8 kHz]
+    #[arg(long, value_name = "TIMES")]
+    pub oversample: Option<String>,
+    /// Sample rate of the files, Hz [default: that of the recording]
+    #[arg(long, value_name = "HZ")]
+    pub rate: Option<String>,
+    /// Go on after the end of the recording until the stage has come to rest, in seconds
+    #[arg(long, value_name = "SECONDS")]
+    pub tail: Option<String>,
+    /// Add triangular dither to 16-bit files
+    #[arg(long)]
+    pub dither: bool,
+    /// Raise or lower the recording before the stage, dB
+    #[arg(long, value_name = "DB", allow_hyphen_values = true)]
+    pub drive: Option<String>,
+    /// V rms at the output written as 0 dBFS [default: output.full_scale, or the loudest peak at −1 dBFS]
+    #[arg(long, value_name = "V")]
+    pub full_scale: Option<String>,
+}
+
+/// Sample formats that can be written.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum SampleFormat {
+    /// 16-bit integer
+    I16,
+    /// 24-bit integer
+    I24,
+    /// 32-bit integer
+    I32,
+    /// 32-bit float
+    F32,
+}

@@ -1,0 +1,13 @@
+//! `platewright compare`.
+
+use crate::failure::{Failure, Outcome};
+use crate::plan::ComparePlan;
+
+/// Runs the command.
+///
+/// # Errors
+/// [`Failure`] where the stage file is wrong, or, as long as this command is not finished, always.
+pub fn run(plan: &ComparePlan) -> Result<Outcome, Failure> {
+    super::stage(&plan.stage)?;
+    Err(super::not_yet("compare"))
+}
