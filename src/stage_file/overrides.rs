@@ -184,6 +184,9 @@ fn compare_values<'a>(path: &str, entry: &'a Entry, problems: &mut Vec<Problem>)
     let found = problems.len();
     let mut seen = HashSet::new();
     for value in values {
+        if matches!(value.value, Value::List(_)) {
+            continue;
+        }
         let label = names::label(&[path.to_owned()], value);
         if !seen.insert(label.clone()) {
             let title = format!("`compare`: \"{path}\" has the value {} twice", names::shown_value(path, value));

@@ -47,6 +47,11 @@ impl Problem {
         self
     }
 
+    /// Whether it is the same problem, whichever configurations have it.
+    pub fn is_like(&self, other: &Self) -> bool {
+        self.span == other.span && self.title == other.title
+    }
+
     /// The same, as something that is not there.
     pub fn missing(mut self) -> Self {
         self.missing = true;
