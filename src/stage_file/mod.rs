@@ -96,12 +96,12 @@ fn check(text: &str, library: &Library<'_>) -> Result<StageFile, Vec<Problem>> {
     let tubes = Tubes::read(&root, library, &mut problems, &mut notes);
     let variants = overrides::variants(&root, &mut problems);
 
-    let mut results = Vec::with_capacity(variants.len());
-    for variant in &variants {
-        results.push(build::build(&variant.apply(&root), end, &tubes));
-    }
+    // Each configuration copies what it changes: the stage, not the tubes and lists beside it.
+    let drawing = root.only(&schema::STAGE_TABLES);
+    let results: Vec<_> =
+        variants.iter().map(|variant| build::build(&variant.apply(&drawing), end, &tubes)).collect();
     // What is wrong with the stage as drawn is told even where every list changes it; what is missing a list may bring.
-    let mut drawn = build::build(&root, end, &tubes).err().unwrap_or_default();
+    let mut drawn = build::build(&drawing, end, &tubes).err().unwrap_or_default();
     drawn.retain(|problem| !problem.missing);
     let varied = gather(&variants, &results);
     problems.extend(varied.into_iter().filter(|problem| !drawn.iter().any(|known| known.is_like(problem))));

@@ -436,12 +436,13 @@ fn too_many(root: &Table, product: usize, sets: usize) -> Problem {
     let span = root.get("compare").or(root.get("configuration")).map_or(0..0, |node| node.span.clone());
     let count = match (product, sets) {
         (usize::MAX, _) => "more than can be counted".to_owned(),
+        (0, sets) => format!("{sets}"),
         (product, 0) => format!("{product} combinations"),
         (product, sets) => format!("{product} combinations and {sets} more"),
     };
     Problem::new(
         &span,
-        format!("`compare` makes too many configurations: {count}"),
+        format!("there are too many configurations: {count}"),
         format!("expected at most {MOST_CONFIGURATIONS} configurations in all"),
         "shorten the lists, link keys by +, or name the ones you want as [[configuration]]",
     )

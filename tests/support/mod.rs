@@ -1,4 +1,6 @@
 //! A folder to run the program in.
+//! Each test binary uses a part of it.
+#![allow(dead_code)]
 
 use std::collections::BTreeSet;
 use std::path::PathBuf;
