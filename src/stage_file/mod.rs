@@ -97,16 +97,16 @@ fn check(text: &str, library: &Library<'_>) -> Result<StageFile, Vec<Problem>> {
     let tubes = Tubes::read(&root, library, &mut problems, &mut notes);
     let variants = overrides::variants(&root, &mut problems);
 
-    let mut results = Vec::with_capacity(variants.len());
-    for variant in &variants {
-        results.push(build::build(&variant.apply(&root), end, &tubes));
-    }
-    if variants.is_empty() {
-        // The lists are wrong; the stage as drawn may still have something to tell, except what lists might provide.
-        let drawn = build::build(&root, end, &tubes).err().unwrap_or_default();
-        problems.extend(drawn.into_iter().filter(|problem| !problem.missing));
-    }
-    problems.extend(gather(&variants, &results));
+    // Each configuration copies what it changes: the stage, not the tubes and lists beside it.
+    let drawing = root.only(&schema::STAGE_TABLES);
+    let results: Vec<_> =
+        variants.iter().map(|variant| build::build(&variant.apply(&drawing), end, &tubes)).collect();
+    // What is wrong with the stage as drawn is told even where every list changes it; what is missing a list may bring.
+    let mut drawn = build::build(&drawing, end, &tubes).err().unwrap_or_default();
+    drawn.retain(|problem| !problem.missing);
+    let varied = gather(&variants, &results);
+    problems.extend(varied.into_iter().filter(|problem| !drawn.iter().any(|known| known.is_like(problem))));
+    problems.append(&mut drawn);
     if misspelt {
         // What is missing may only be missing because it is misspelt.
         problems.retain(|problem| !problem.missing);

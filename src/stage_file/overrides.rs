@@ -184,6 +184,9 @@ fn compare_values<'a>(path: &str, entry: &'a Entry, problems: &mut Vec<Problem>)
     let found = problems.len();
     let mut seen = HashSet::new();
     for value in values {
+        if matches!(value.value, Value::List(_)) {
+            continue;
+        }
         let label = names::label(&[path.to_owned()], value);
         if !seen.insert(label.clone()) {
             let title = format!("`compare`: \"{path}\" has the value {} twice", names::shown_value(path, value));
@@ -433,12 +436,13 @@ fn too_many(root: &Table, product: usize, sets: usize) -> Problem {
     let span = root.get("compare").or(root.get("configuration")).map_or(0..0, |node| node.span.clone());
     let count = match (product, sets) {
         (usize::MAX, _) => "more than can be counted".to_owned(),
+        (0, sets) => format!("{sets}"),
         (product, 0) => format!("{product} combinations"),
         (product, sets) => format!("{product} combinations and {sets} more"),
     };
     Problem::new(
         &span,
-        format!("`compare` makes too many configurations: {count}"),
+        format!("there are too many configurations: {count}"),
         format!("expected at most {MOST_CONFIGURATIONS} configurations in all"),
         "shorten the lists, link keys by +, or name the ones you want as [[configuration]]",
     )

@@ -1,5 +1,7 @@
 //! Problems of a stage file, each with its place, and how a person sees them.
 
+use std::collections::HashSet;
+
 use annotate_snippets::{AnnotationKind, Group, Level, Renderer, Snippet};
 
 use super::tree::Span;
@@ -8,8 +10,11 @@ use crate::terminal::plain;
 /// Most problems shown at once; the rest are counted.
 const SHOWN_AT_ONCE: usize = 8;
 
+/// Longest sentence of a message, characters.
+const LONGEST_SENTENCE: usize = 600;
+
 /// One problem.
-#[derive(Clone, Debug, PartialEq, Eq)]
+#[derive(Clone, Debug, PartialEq, Eq, Hash)]
 pub struct Problem {
     /// Where it is.
     pub span: Span,
@@ -47,6 +52,11 @@ impl Problem {
         self
     }
 
+    /// Whether it is the same problem, whichever configurations have it.
+    pub fn is_like(&self, other: &Self) -> bool {
+        self.span == other.span && self.title == other.title
+    }
+
     /// The same, as something that is not there.
     pub fn missing(mut self) -> Self {
         self.missing = true;
@@ -65,12 +75,9 @@ pub struct Diagnosis {
 impl Diagnosis {
     /// The problems of `text`, the file that a person knows as `name`; in the order of the file, none twice.
     pub fn new(name: &str, text: &str, problems: Vec<Problem>) -> Self {
-        let mut unique: Vec<Problem> = Vec::with_capacity(problems.len());
-        for problem in problems {
-            if !unique.contains(&problem) {
-                unique.push(problem);
-            }
-        }
+        let mut seen = HashSet::new();
+        let mut unique: Vec<Problem> =
+            problems.into_iter().filter(|problem| seen.insert(problem.clone())).collect();
         unique.sort_by_key(|problem| problem.span.start);
         Self { name: plain(name).into_owned(), text: text.to_owned(), problems: unique }
     }
@@ -100,16 +107,24 @@ impl Diagnosis {
         let mut snippet = Snippet::source(excerpt.text)
             .line_start(excerpt.first_line)
             .path(self.name.as_str())
-            .annotation(AnnotationKind::Primary.span(excerpt.span).label(plain(&problem.label).into_owned()));
+            .annotation(AnnotationKind::Primary.span(excerpt.span).label(shown(&problem.label)));
         if let Some((span, label)) = excerpt.other {
-            snippet = snippet.annotation(AnnotationKind::Context.span(span).label(plain(&label).into_owned()));
+            snippet = snippet.annotation(AnnotationKind::Context.span(span).label(shown(&label)));
         }
-        let mut group: Group<'_> = Level::ERROR.primary_title(plain(&problem.title).into_owned()).element(snippet);
+        let mut group: Group<'_> = Level::ERROR.primary_title(shown(&problem.title)).element(snippet);
         if let Some(note) = &problem.note {
-            group = group.element(Level::NOTE.message(plain(note).into_owned()));
+            group = group.element(Level::NOTE.message(shown(note)));
         }
-        group = group.element(Level::HELP.message(plain(&problem.remedy).into_owned()));
+        group = group.element(Level::HELP.message(shown(&problem.remedy)));
         renderer.render(&[group])
+    }
+}
+
+/// A sentence for a person: hidden signs written out, and cut where a key of the file has made it endless.
+fn shown(sentence: &str) -> String {
+    match sentence.char_indices().nth(LONGEST_SENTENCE) {
+        Some((at, _)) => format!("{}…", plain(&sentence[..at])),
+        None => plain(sentence).into_owned(),
     }
 }
 

@@ -85,6 +85,16 @@ impl Quantity {
         };
         letters.and_then(|letters| iec60062::format_exact(value, letters)).unwrap_or_else(|| format!("{value}"))
     }
+
+    /// Any value for a person, with its unit: "-47k Ω", "330 F", "0.5".
+    pub fn show_with_unit(&self, value: f64) -> String {
+        let sign = if value < 0.0 { "-" } else { "" };
+        let mut text = self.show(value.abs());
+        if text.contains(['R', 'F']) {
+            text = format!("{}", value.abs());
+        }
+        format!("{sign}{text} {}", self.unit).trim_end().to_owned()
+    }
 }
 
 fn bound(value: f64) -> String {
@@ -115,5 +125,8 @@ mod tests {
         assert_eq!(CAPACITOR.show(390e-9), "390n");
         assert_eq!(RESISTOR.show(12345.0), "12345");
         assert_eq!(VOLTAGE.show(290.0), "290");
+        assert_eq!(RESISTOR.show_with_unit(-47e3), "-47k Ω");
+        assert_eq!(CAPACITOR.show_with_unit(330.0), "330 F");
+        assert_eq!(FRACTION.show_with_unit(45.0), "45");
     }
 }

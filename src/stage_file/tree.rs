@@ -113,9 +113,9 @@ impl Table {
         }
     }
 
-    /// Leaves out `key`.
-    pub fn remove(&mut self, key: &str) {
-        self.entries.retain(|entry| entry.key != key);
+    /// A copy with these keys alone.
+    pub fn only(&self, keys: &[&str]) -> Self {
+        Self { entries: self.entries.iter().filter(|entry| keys.contains(&entry.key.as_str())).cloned().collect() }
     }
 }
 

@@ -37,15 +37,15 @@ pub fn number(path: &str, doc: &str, quantity: &Quantity, node: &Node) -> Result
     if quantity.allows(value) {
         return Ok(value);
     }
-    let shown = if quantity.unit.is_empty() { quantity.show(value) } else { format!("{value} {}", quantity.unit) };
-    let title = format!("`{path}` is {shown}, which is {}", wrongness(quantity, value));
+    let title = format!("`{path}` is {}, which is {}", quantity.show_with_unit(value), wrongness(quantity, value));
     Err(Problem::new(&node.span, title, expected, remedy(quantity, value).unwrap_or(how)))
 }
 
 fn wrongness(quantity: &Quantity, value: f64) -> &'static str {
     match value {
         _ if value > quantity.high => "too large",
-        _ if value == 0.0 => "zero",
+        _ if value == 0.0 && quantity.unit == "Ω" => "a wire",
+        _ if value == 0.0 => "nothing",
         _ if value < 0.0 && quantity.low >= 0.0 => "negative",
         _ => "too small",
     }
