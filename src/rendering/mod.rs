@@ -131,7 +131,7 @@ impl<'a> Job<'a> {
             self.kernel,
             ratio(self.sound.drive),
         );
-        Ok(Passage::new(self.configurations, recording, self.sound, oversampling, lanes, files, &self.level))
+        Ok(Passage::new(self, recording, files, oversampling, lanes))
     }
 
     fn oversampling(&self, recording: &Recording) -> Result<Oversampling, Failure> {

@@ -2,16 +2,17 @@
 
 use std::path::PathBuf;
 
+use platewright_dsp::Kernel;
 use platewright_dsp::portable::decibels;
-use platewright_dsp::signal::Oversampling;
+use platewright_dsp::signal::{Oversampling, Resampler, TriangularDither};
 
 use super::lanes::Lanes;
 use super::level::Level;
 use super::progress::Progress;
-use super::{RenderFigures, names};
+use super::{Job, RenderFigures, names};
 use crate::audio_files::{OutputFolder, Recording, SampleFormat, Scratch, StagedFile, WavOutput};
 use crate::cli;
-use crate::failure::Failure;
+use crate::failure::{Failure, RequestError};
 use crate::plan::Sound;
 use crate::stage_file::Configuration;
 
@@ -28,6 +29,7 @@ pub struct Passage<'a> {
     files: &'a [PathBuf],
     stated: bool,
     level: &'a Level,
+    kernel: Kernel,
 }
 
 /// A recording that has passed.
@@ -38,35 +40,63 @@ pub struct Passed<'a> {
 
 /// Where a configuration's volts go.
 struct Sink {
+    /// One a channel, where the files get another sample rate than the recording's.
+    resamplers: Vec<Resampler>,
     target: Target,
     peak_volts: f64,
 }
 
 enum Target {
     /// The level is known: straight into the file.
-    File(Box<WavOutput>, f64),
+    File(Box<ScaledFile>),
     /// It waits for the loudest peak.
     Waiting(Scratch),
 }
 
 impl<'a> Passage<'a> {
     pub fn new(
-        configurations: &'a [Configuration],
+        job: &'a Job<'a>,
         recording: &'a Recording,
-        sound: &'a Sound,
+        files: &'a [PathBuf],
         oversampling: Oversampling,
         lanes: Lanes,
-        files: &'a [PathBuf],
-        level: &'a Level,
     ) -> Self {
-        let stated = matches!(level, Level::Stated(_));
-        Passage { configurations, recording, sound, oversampling, lanes, files, stated, level }
+        Passage {
+            configurations: job.configurations,
+            recording,
+            sound: job.sound,
+            oversampling,
+            lanes,
+            files,
+            stated: matches!(job.level, Level::Stated(_)),
+            level: &job.level,
+            kernel: job.kernel,
+        }
     }
 
-    /// Frames of the output.
+    /// Frames of the output at the recording's rate.
     fn frames(&self) -> u64 {
         let tail = (self.sound.tail * f64::from(self.recording.sample_rate())).round() as u64;
         self.recording.frames() + tail
+    }
+
+    fn sample_rate(&self) -> u32 {
+        self.sound.rate.unwrap_or(self.recording.sample_rate())
+    }
+
+    /// Frames of the files.
+    fn file_frames(&self) -> Result<u64, Failure> {
+        Ok(self.resampler()?.map_or(self.frames(), |r| r.output_frames(self.frames())))
+    }
+
+    fn resampler(&self) -> Result<Option<Resampler>, Failure> {
+        let (from, to) = (self.recording.sample_rate(), self.sample_rate());
+        if from == to {
+            return Ok(None);
+        }
+        let made = Resampler::new(from, to, self.kernel);
+        let refused = made.map_err(|bad| RequestError::new(format!("--rate: {bad}"), "choose 8000 to 192000"));
+        Ok(Some(refused?))
     }
 
     fn format(&self) -> SampleFormat {
@@ -78,20 +108,25 @@ impl<'a> Passage<'a> {
         }
     }
 
-    fn wav(&self, folder: &OutputFolder, configuration: usize) -> Result<WavOutput, Failure> {
+    fn scaled_file(&self, folder: &OutputFolder, configuration: usize, scale: f64) -> Result<ScaledFile, Failure> {
         let file = folder.stage(&self.files[configuration])?;
-        let (channels, rate) = (self.recording.channels(), self.recording.sample_rate());
-        Ok(WavOutput::new(file, self.format(), channels, rate, self.frames())?)
+        let (channels, format) = (self.recording.channels(), self.format());
+        let wav = WavOutput::new(file, format, channels, self.sample_rate(), self.file_frames()?)?;
+        let dithered = if self.sound.dither { channels } else { 0 };
+        let dither = (0..dithered).map(TriangularDither::for_channel).collect();
+        Ok(ScaledFile { wav, scale, dither, step: format.step() })
     }
 
     fn sink(&self, folder: &OutputFolder, configuration: usize) -> Result<Sink, Failure> {
+        let channels = self.recording.channels();
         let target = if self.stated {
             let scale = self.level.samples_per_volt(configuration, 0.0);
-            Target::File(Box::new(self.wav(folder, configuration)?), scale)
+            Target::File(Box::new(self.scaled_file(folder, configuration, scale)?))
         } else {
-            Target::Waiting(Scratch::new_in(folder.path(), self.recording.channels())?)
+            Target::Waiting(Scratch::new_in(folder.path(), channels)?)
         };
-        Ok(Sink { target, peak_volts: 0.0 })
+        let resamplers = self.resampler()?.map_or_else(Vec::new, |resampler| vec![resampler; channels]);
+        Ok(Sink { resamplers, target, peak_volts: 0.0 })
     }
 
     /// Steps the whole recording, and silence after it until the last frame has come out.
@@ -126,24 +161,65 @@ impl<'a> Passage<'a> {
                 sink.take(channels)?;
             }
         }
+        for sink in &mut sinks {
+            sink.end()?;
+        }
         Ok(Passed { passage: self, sinks })
     }
 }
 
 impl Sink {
+    /// Takes a block, one plane a channel; the planes' contents are used up.
     fn take(&mut self, channels: &mut [Vec<f64>]) -> Result<(), Failure> {
+        if self.resamplers.is_empty() {
+            return self.put(channels);
+        }
+        let resample = |(resampler, plane): (&mut Resampler, &Vec<f64>)| {
+            let mut out = Vec::new();
+            resampler.process(plane, &mut out);
+            out
+        };
+        let mut resampled: Vec<Vec<f64>> = self.resamplers.iter_mut().zip(&*channels).map(resample).collect();
+        self.put(&mut resampled)
+    }
+
+    /// What the resamplers still hold.
+    fn end(&mut self) -> Result<(), Failure> {
+        let finish = |resampler: &mut Resampler| {
+            let mut out = Vec::new();
+            resampler.finish(&mut out);
+            out
+        };
+        let mut rest: Vec<Vec<f64>> = self.resamplers.iter_mut().map(finish).collect();
+        if rest.is_empty() { Ok(()) } else { self.put(&mut rest) }
+    }
+
+    fn put(&mut self, channels: &mut [Vec<f64>]) -> Result<(), Failure> {
         self.peak_volts = channels.iter().flatten().fold(self.peak_volts, |peak, volts| peak.max(volts.abs()));
         match &mut self.target {
-            Target::Waiting(scratch) => scratch.write(channels)?,
-            Target::File(file, scale) => write_scaled(file, channels, *scale)?,
+            Target::Waiting(scratch) => Ok(scratch.write(channels)?),
+            Target::File(file) => file.write(channels),
         }
-        Ok(())
     }
 }
 
-fn write_scaled(file: &mut WavOutput, channels: &mut [Vec<f64>], scale: f64) -> Result<(), Failure> {
-    channels.iter_mut().flatten().for_each(|volts| *volts *= scale);
-    Ok(file.write(channels)?)
+/// A file with the factor that makes samples of volts.
+struct ScaledFile {
+    wav: WavOutput,
+    scale: f64,
+    /// One a channel, where dither is wanted.
+    dither: Vec<TriangularDither>,
+    step: f64,
+}
+
+impl ScaledFile {
+    fn write(&mut self, channels: &mut [Vec<f64>]) -> Result<(), Failure> {
+        channels.iter_mut().flatten().for_each(|volts| *volts *= self.scale);
+        for (dither, channel) in self.dither.iter_mut().zip(channels.iter_mut()) {
+            dither.add(channel, self.step);
+        }
+        Ok(self.wav.write(channels)?)
+    }
 }
 
 impl Passed<'_> {
@@ -165,19 +241,20 @@ impl Passed<'_> {
         for (configuration, sink) in sinks.into_iter().enumerate() {
             let scale = level.samples_per_volt(configuration, peak);
             let file = match sink.target {
-                Target::File(file, _) => *file,
+                Target::File(file) => *file,
                 Target::Waiting(scratch) => {
-                    let mut file = passage.wav(folder, configuration)?;
+                    let mut file = passage.scaled_file(folder, configuration, scale)?;
                     let mut waiting = scratch.into_reader()?;
                     let mut planes = vec![Vec::new(); channels];
                     while waiting.read(&mut planes, BLOCK)? > 0 {
-                        write_scaled(&mut file, &mut planes, scale)?;
+                        file.write(&mut planes)?;
                     }
                     file
                 }
             };
-            let (staged, levels) = file.finish()?;
-            let figures = passage.figures(configuration, scale, sink.peak_volts, levels.over_full_scale);
+            let (staged, levels) = file.wav.finish()?;
+            let frames = passage.file_frames()?;
+            let figures = passage.figures(configuration, frames, scale, sink.peak_volts, levels.over_full_scale);
             hand_over(staged, figures);
         }
         Ok(())
@@ -185,7 +262,14 @@ impl Passed<'_> {
 }
 
 impl Passage<'_> {
-    fn figures(&self, configuration: usize, scale: f64, peak_volts: f64, over_full_scale: u64) -> RenderFigures {
+    fn figures(
+        &self,
+        configuration: usize,
+        frames: u64,
+        scale: f64,
+        peak_volts: f64,
+        over_full_scale: u64,
+    ) -> RenderFigures {
         let counts = self.lanes.counts(configuration);
         let channels = self.recording.channels();
         let steps =
@@ -196,9 +280,9 @@ impl Passage<'_> {
             recording: name(self.recording.path()),
             configuration: self.configurations[configuration].name.clone(),
             file: names::shown(&self.files[configuration]),
-            sample_rate: self.recording.sample_rate(),
+            sample_rate: self.sample_rate(),
             channels,
-            frames: self.frames(),
+            frames,
             format: format!("{:?}", self.sound.format).to_lowercase(),
             oversampling: self.oversampling.factor(),
             full_scale_rms: 1.0 / (scale * std::f64::consts::SQRT_2),
