@@ -5,6 +5,9 @@
 
 use std::ops::{Add, Div, Mul, Neg, Sub};
 
+#[cfg(target_arch = "x86_64")]
+pub(crate) mod avx2;
+
 /// How many lanes are stepped at once.
 pub const LANES: usize = 4;
 
@@ -25,6 +28,16 @@ pub trait Lanes:
     fn min(self, other: Self) -> Self;
     /// Absolute value.
     fn abs(self) -> Self;
+}
+
+/// Arithmetic on four lanes, in the form that a kernel keeps them while it runs.
+pub(crate) trait FourLanes: Lanes {
+    /// From memory.
+    fn load(from: &F64x4) -> Self;
+    /// To memory.
+    fn store(self) -> F64x4;
+    /// Whether every lane is below `bound`; a NaN is not.
+    fn all_below(self, bound: f64) -> bool;
 }
 
 macro_rules! lanewise {
@@ -82,6 +95,22 @@ impl Lanes for F64x4 {
     fn abs(self) -> Self {
         let a = self.0;
         F64x4([a[0].abs(), a[1].abs(), a[2].abs(), a[3].abs()])
+    }
+}
+
+impl FourLanes for F64x4 {
+    #[inline(always)]
+    fn load(from: &F64x4) -> Self {
+        *from
+    }
+    #[inline(always)]
+    fn store(self) -> F64x4 {
+        self
+    }
+    #[inline(always)]
+    fn all_below(self, bound: f64) -> bool {
+        let v = self.0;
+        (v[0] < bound) & (v[1] < bound) & (v[2] < bound) & (v[3] < bound)
     }
 }
 

@@ -2,9 +2,12 @@
 
 mod law;
 pub mod library;
+mod lookup;
+mod spline;
 mod table;
 mod tube;
 
 pub use law::{Currents, DempwolfZoelzer, GridLaw, Koren, Law, TwoSection};
+pub(crate) use lookup::Lookup;
 pub(crate) use table::{LaneCurrents, LawKind, Tables, TabulatedSection, TubeNumbers, currents, gather};
 pub use tube::{Capacitances, Heater, Limits, Section, TubeType};

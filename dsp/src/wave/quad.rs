@@ -6,9 +6,11 @@
 
 use super::machine::Machine;
 use super::root::{self, RootCounts};
-use crate::lanes::{F64x4, LANES, Lanes};
+#[cfg(target_arch = "x86_64")]
+use crate::lanes::avx2::Avx2x4;
+use crate::lanes::{F64x4, FourLanes, LANES};
 use crate::linear::Matrix;
-use crate::triode::{LaneCurrents, LawKind, Tables, TubeNumbers, currents, gather};
+use crate::triode::{LaneCurrents, LawKind, Lookup, Tables, TubeNumbers, currents, gather};
 
 /// A correction below this many volts at every port ends a lane's Newton steps.
 pub(crate) const SMALL_CORRECTION: f64 = 1e-3;
@@ -27,7 +29,8 @@ struct Coefficients<const PORTS: usize, const MODES: usize> {
     root_by_mode: [[F64x4; MODES]; PORTS],
     root_by_signal: [F64x4; PORTS],
     root_constant: [F64x4; PORTS],
-    root_by_current: [[F64x4; PORTS]; PORTS],
+    /// What a current takes from the root's voltages: −(`root_by_current`), Ω.
+    resistance: [[F64x4; PORTS]; PORTS],
     output_by_mode: [F64x4; MODES],
     output_by_signal: F64x4,
     output_constant: F64x4,
@@ -37,17 +40,35 @@ struct Coefficients<const PORTS: usize, const MODES: usize> {
 
 /// What changes from step to step: mode amplitudes, and the root's voltages of the last three steps, newest first.
 #[derive(Clone, Copy)]
-struct State<const PORTS: usize, const MODES: usize> {
-    modes: [F64x4; MODES],
-    volts: [[F64x4; PORTS]; 3],
+struct State<V, const PORTS: usize, const MODES: usize> {
+    modes: [V; MODES],
+    volts: [[V; PORTS]; 3],
 }
+
+impl<V: FourLanes, const PORTS: usize, const MODES: usize> State<V, PORTS, MODES> {
+    #[inline(always)]
+    fn load(from: &State<F64x4, PORTS, MODES>) -> Self {
+        State {
+            modes: from.modes.each_ref().map(V::load),
+            volts: from.volts.each_ref().map(|v| v.each_ref().map(V::load)),
+        }
+    }
+    #[inline(always)]
+    fn store(self) -> State<F64x4, PORTS, MODES> {
+        State { modes: self.modes.map(V::store), volts: self.volts.map(|v| v.map(V::store)) }
+    }
+}
+
+/// Four lanes, in the form of one kernel, that the engine's loop can be compiled for.
+trait Form: FourLanes + for<'a> Lookup<Tables<'a> = [&'a Tables; LANES]> {}
+impl<V: FourLanes + for<'a> Lookup<Tables<'a> = [&'a Tables; LANES]>> Form for V {}
 
 /// Four lanes of machines of one shape.
 pub(crate) struct Quad<const PORTS: usize, const MODES: usize> {
     machines: [Machine; LANES],
     kinds: [LawKind; 2],
     coefficients: Box<Coefficients<PORTS, MODES>>,
-    state: State<PORTS, MODES>,
+    state: State<F64x4, PORTS, MODES>,
     /// Volts on capacitors that a lane's network has left out.
     held: [Vec<(&'static str, f64)>; LANES],
     counts: [RootCounts; LANES],
@@ -91,32 +112,32 @@ impl<const PORTS: usize, const MODES: usize> Quad<PORTS, MODES> {
     }
 
     #[inline(always)]
-    fn run(&mut self, input: &[F64x4], output: &mut [F64x4]) {
+    fn run<V: Form>(&mut self, input: &[F64x4], output: &mut [F64x4]) {
         let tables: [[&Tables; LANES]; 2] = std::array::from_fn(|tube| {
             std::array::from_fn(|lane| &*self.machines[lane].tubes[tube.min(PORTS / 2 - 1)].tables)
         });
-        let mut state = self.state;
+        let mut state = State::<V, PORTS, MODES>::load(&self.state);
         let c = &*self.coefficients;
         let mut repeats = Repeats { counts: &mut self.counts, machines: &self.machines };
-        for (&u, out) in input.iter().zip(output.iter_mut()) {
-            *out = step(c, self.kinds, &tables, &mut state, u, &mut repeats);
+        for (u, out) in input.iter().zip(output.iter_mut()) {
+            *out = step(c, self.kinds, &tables, &mut state, V::load(u), &mut repeats).store();
         }
         for counts in repeats.counts.iter_mut() {
             counts.newton += input.len() as u64;
         }
-        self.state = state;
+        self.state = state.store();
     }
 }
 
 impl<const PORTS: usize, const MODES: usize> Step for Quad<PORTS, MODES> {
     fn portable(&mut self, input: &[F64x4], output: &mut [F64x4]) {
-        self.run(input, output);
+        self.run::<F64x4>(input, output);
     }
 
     #[cfg(target_arch = "x86_64")]
     #[target_feature(enable = "avx2")]
     unsafe fn avx2(&mut self, input: &[F64x4], output: &mut [F64x4]) {
-        self.run(input, output);
+        self.run::<Avx2x4>(input, output);
     }
 
     fn refill(&mut self, lane: usize, machine: &Machine) {
@@ -179,7 +200,7 @@ fn coefficients<const PORTS: usize, const MODES: usize>(machines: &[Machine; LAN
         root_by_mode: from_fn(|p| from_fn(|k| mode(k, &|m| m.modes.root_by_mode[(p, k)]))),
         root_by_signal: from_fn(|p| each(&|m| m.modes.root_by_signal[p])),
         root_constant: from_fn(|p| each(&|m| m.modes.root_constant[p])),
-        root_by_current: from_fn(|p| from_fn(|q| each(&|m| m.modes.root_by_current[(p, q)]))),
+        resistance: from_fn(|p| from_fn(|q| each(&|m| -m.modes.root_by_current[(p, q)]))),
         output_by_mode: from_fn(|k| mode(k, &|m| m.modes.output_by_mode[k])),
         output_by_signal: each(&|m| m.modes.output_by_signal),
         output_constant: each(&|m| m.modes.output_constant),
@@ -189,45 +210,52 @@ fn coefficients<const PORTS: usize, const MODES: usize>(machines: &[Machine; LAN
 }
 
 #[inline(always)]
-fn step<const PORTS: usize, const MODES: usize>(
+fn step<V: Form, const PORTS: usize, const MODES: usize>(
     c: &Coefficients<PORTS, MODES>,
     kinds: [LawKind; 2],
     tables: &[[&Tables; LANES]; 2],
-    state: &mut State<PORTS, MODES>,
-    u: F64x4,
+    state: &mut State<V, PORTS, MODES>,
+    u: V,
     repeats: &mut Repeats<'_>,
-) -> F64x4 {
-    let mut offer = [F64x4::default(); PORTS];
-    let mut volts = [F64x4::default(); PORTS];
+) -> V {
+    let mut offer = [V::splat(0.0); PORTS];
+    let mut volts = [V::splat(0.0); PORTS];
     for p in 0..PORTS {
-        let mut sum = c.root_by_signal[p] * u + c.root_constant[p];
+        let mut sum = V::load(&c.root_by_signal[p]) * u + V::load(&c.root_constant[p]);
         for k in 0..MODES {
-            sum = sum + c.root_by_mode[p][k] * state.modes[k];
+            sum = sum + V::load(&c.root_by_mode[p][k]) * state.modes[k];
         }
         offer[p] = sum;
         // A parabola through the last three.
         let [v0, v1, v2] = [state.volts[0][p], state.volts[1][p], state.volts[2][p]];
-        volts[p] = F64x4::splat(3.0) * (v0 - v1) + v2;
+        volts[p] = V::splat(3.0) * (v0 - v1) + v2;
     }
-    let mut currents = [F64x4::default(); PORTS];
+    let mut currents = [V::splat(0.0); PORTS];
     let correction = correct(c, kinds, tables, &offer, &mut volts, &mut currents);
-    if !all_below(correction, SMALL_CORRECTION) {
-        let mut root = OpenRoot { offer, volts, currents, correction };
-        repeats.go_on(c, kinds, tables, &mut root);
-        volts = root.volts;
-        currents = root.currents;
+    if !correction.all_below(SMALL_CORRECTION) {
+        let store = |values: &[V; PORTS]| values.map(V::store);
+        let mut root = OpenRoot {
+            offer: store(&offer),
+            volts: store(&volts),
+            currents: store(&currents),
+            correction: correction.store(),
+        };
+        repeats.go_on::<V, PORTS, MODES>(c, kinds, tables, &mut root);
+        volts = root.volts.each_ref().map(V::load);
+        currents = root.currents.each_ref().map(V::load);
     }
-    let mut output = c.output_by_signal * u + c.output_constant;
+    let mut output = V::load(&c.output_by_signal) * u + V::load(&c.output_constant);
     for k in 0..MODES {
-        output = output + c.output_by_mode[k] * state.modes[k];
+        output = output + V::load(&c.output_by_mode[k]) * state.modes[k];
     }
     for p in 0..PORTS {
-        output = output + c.output_by_current[p] * currents[p];
+        output = output + V::load(&c.output_by_current[p]) * currents[p];
     }
     for k in 0..MODES {
-        let mut next = c.mode_by_signal[k] * u + c.mode_constant[k] + c.eigenvalue[k] * state.modes[k];
+        let mut next = V::load(&c.mode_by_signal[k]) * u + V::load(&c.mode_constant[k]);
+        next = next + V::load(&c.eigenvalue[k]) * state.modes[k];
         for p in 0..PORTS {
-            next = next + c.mode_by_current[k][p] * currents[p];
+            next = next + V::load(&c.mode_by_current[k][p]) * currents[p];
         }
         state.modes[k] = next;
     }
@@ -238,46 +266,45 @@ fn step<const PORTS: usize, const MODES: usize>(
 /// One Newton step in every lane: moves `volts`, leaves the currents of the linearisation there, and returns the largest
 /// move of each lane.
 #[inline(always)]
-fn correct<const PORTS: usize, const MODES: usize>(
+fn correct<V: Form, const PORTS: usize, const MODES: usize>(
     c: &Coefficients<PORTS, MODES>,
     kinds: [LawKind; 2],
     tables: &[[&Tables; LANES]; 2],
-    offer: &[F64x4; PORTS],
-    volts: &mut [F64x4; PORTS],
-    amps: &mut [F64x4; PORTS],
-) -> F64x4 {
-    let first = currents(kinds[0], &c.tubes[0], tables[0], volts[0], volts[1]);
+    offer: &[V; PORTS],
+    volts: &mut [V; PORTS],
+    amps: &mut [V; PORTS],
+) -> V {
+    let first = currents(kinds[0], &c.tubes[0].map(V::load), tables[0], volts[0], volts[1]);
     amps[0] = first.grid;
     amps[1] = first.plate;
     let mut second = None;
     if PORTS == 4 {
-        let s = currents(kinds[1], &c.tubes[1], tables[1], volts[2], volts[3]);
+        let s = currents(kinds[1], &c.tubes[1].map(V::load), tables[1], volts[2], volts[3]);
         amps[2] = s.grid;
         amps[3] = s.plate;
         second = Some(s);
     }
-    let mut residual = [F64x4::default(); PORTS];
+    let mut residual = [V::splat(0.0); PORTS];
+    let mut matrix = [[V::splat(0.0); PORTS]; PORTS];
     for p in 0..PORTS {
+        let r = c.resistance[p].each_ref().map(V::load);
         let mut sum = volts[p] - offer[p];
         for q in 0..PORTS {
-            sum = sum - c.root_by_current[p][q] * amps[q];
+            sum = sum + r[q] * amps[q];
         }
         residual[p] = sum;
-    }
-    let mut matrix = [[F64x4::default(); PORTS]; PORTS];
-    for p in 0..PORTS {
-        let k = &c.root_by_current[p];
-        jacobian_row(&first, k[0], k[1], &mut matrix[p], 0);
+        jacobian_row(&first, r[0], r[1], &mut matrix[p], 0);
         if let Some(second) = &second {
-            jacobian_row(second, k[2], k[3], &mut matrix[p], 2);
+            jacobian_row(second, r[2], r[3], &mut matrix[p], 2);
         }
-        matrix[p][p] = matrix[p][p] + F64x4::splat(1.0);
+        matrix[p][p] = matrix[p][p] + V::splat(1.0);
     }
     let move_by = solve(&matrix, &residual);
-    let mut largest = F64x4::splat(0.0);
+    let mut largest = V::splat(0.0);
     for p in 0..PORTS {
         volts[p] = volts[p] - move_by[p];
-        largest = move_by[p].abs().max(largest);
+        // In this order a NaN move, which reaches the last port whenever it reaches any, is not lost.
+        largest = largest.max(move_by[p].abs());
     }
     linearise(&first, amps, &move_by, 0);
     if let Some(second) = &second {
@@ -287,23 +314,23 @@ fn correct<const PORTS: usize, const MODES: usize>(
 }
 
 #[inline(always)]
-fn jacobian_row(s: &LaneCurrents<F64x4>, by_grid: F64x4, by_plate: F64x4, row: &mut [F64x4], at: usize) {
-    row[at] = -(by_grid * s.grid_by_vgk + by_plate * s.plate_by_vgk);
-    row[at + 1] = -(by_plate * s.plate_by_vpk);
+fn jacobian_row<V: Form>(s: &LaneCurrents<V>, by_grid: V, by_plate: V, row: &mut [V], at: usize) {
+    row[at] = by_grid * s.grid_by_vgk + by_plate * s.plate_by_vgk;
+    row[at + 1] = by_plate * s.plate_by_vpk;
 }
 
 #[inline(always)]
-fn linearise(s: &LaneCurrents<F64x4>, amps: &mut [F64x4], move_by: &[F64x4], at: usize) {
+fn linearise<V: Form>(s: &LaneCurrents<V>, amps: &mut [V], move_by: &[V], at: usize) {
     amps[at] = amps[at] - s.grid_by_vgk * move_by[at];
     amps[at + 1] = amps[at + 1] - (s.plate_by_vgk * move_by[at] + s.plate_by_vpk * move_by[at + 1]);
 }
 
 /// Solves by 2 × 2 blocks: two reciprocal determinants instead of four divisions one after another.
 #[inline(always)]
-fn solve<const PORTS: usize>(m: &[[F64x4; PORTS]; PORTS], f: &[F64x4; PORTS]) -> [F64x4; PORTS] {
-    let mut x = [F64x4::default(); PORTS];
-    let inverse = F64x4::splat(1.0) / (m[0][0] * m[1][1] - m[0][1] * m[1][0]);
-    let upper = |a: F64x4, b: F64x4| (inverse * (m[1][1] * a - m[0][1] * b), inverse * (m[0][0] * b - m[1][0] * a));
+fn solve<V: Form, const PORTS: usize>(m: &[[V; PORTS]; PORTS], f: &[V; PORTS]) -> [V; PORTS] {
+    let mut x = [V::splat(0.0); PORTS];
+    let inverse = V::splat(1.0) / (m[0][0] * m[1][1] - m[0][1] * m[1][0]);
+    let upper = |a: V, b: V| (inverse * (m[1][1] * a - m[0][1] * b), inverse * (m[0][0] * b - m[1][0] * a));
     let (g0, g1) = upper(f[0], f[1]);
     if PORTS == 2 {
         (x[0], x[1]) = (g0, g1);
@@ -311,22 +338,16 @@ fn solve<const PORTS: usize>(m: &[[F64x4; PORTS]; PORTS], f: &[F64x4; PORTS]) ->
     }
     let (b02, b12) = upper(m[0][2], m[1][2]);
     let (b03, b13) = upper(m[0][3], m[1][3]);
-    let below = |r: usize, a: F64x4, b: F64x4, c: F64x4| c - m[r][0] * a - m[r][1] * b;
+    let below = |r: usize, a: V, b: V, c: V| c - m[r][0] * a - m[r][1] * b;
     let (s22, s23) = (below(2, b02, b12, m[2][2]), below(2, b03, b13, m[2][3]));
     let (s32, s33) = (below(3, b02, b12, m[3][2]), below(3, b03, b13, m[3][3]));
     let (h2, h3) = (below(2, g0, g1, f[2]), below(3, g0, g1, f[3]));
-    let inverse = F64x4::splat(1.0) / (s22 * s33 - s23 * s32);
+    let inverse = V::splat(1.0) / (s22 * s33 - s23 * s32);
     x[2] = inverse * (s33 * h2 - s23 * h3);
     x[3] = inverse * (s22 * h3 - s32 * h2);
     x[0] = g0 - b02 * x[2] - b03 * x[3];
     x[1] = g1 - b12 * x[2] - b13 * x[3];
     x
-}
-
-#[inline(always)]
-fn all_below(values: F64x4, bound: f64) -> bool {
-    let v = values.0;
-    (v[0] < bound) & (v[1] < bound) & (v[2] < bound) & (v[3] < bound)
 }
 
 /// A root after its first correction.
@@ -345,16 +366,28 @@ struct Repeats<'a> {
 
 impl Repeats<'_> {
     #[inline(always)]
-    fn go_on<const PORTS: usize, const MODES: usize>(
+    fn go_on<V: Form, const PORTS: usize, const MODES: usize>(
         &mut self,
         c: &Coefficients<PORTS, MODES>,
         kinds: [LawKind; 2],
         tables: &[[&Tables; LANES]; 2],
         root: &mut OpenRoot<PORTS>,
     ) {
+        for lane in 0..LANES {
+            if root.offer.iter().any(|v| !v.0[lane].is_finite()) {
+                // Nothing can be solved: the lane stays as it is until it is reset.
+                root.correction.0[lane] = 0.0;
+            }
+        }
+        let offer = root.offer.each_ref().map(V::load);
         for _ in 0..PLAIN_STEPS {
-            let (mut volts, mut amps) = (root.volts, root.currents);
-            let correction = correct(c, kinds, tables, &root.offer, &mut volts, &mut amps);
+            if root.correction.all_below(SMALL_CORRECTION) {
+                return;
+            }
+            let mut volts = root.volts.each_ref().map(V::load);
+            let mut amps = root.currents.each_ref().map(V::load);
+            let correction = correct(c, kinds, tables, &offer, &mut volts, &mut amps).store();
+            let (volts, amps) = (volts.map(V::store), amps.map(V::store));
             for lane in 0..LANES {
                 if root.correction.0[lane] < SMALL_CORRECTION {
                     continue;
@@ -365,9 +398,6 @@ impl Repeats<'_> {
                     root.volts[p].0[lane] = volts[p].0[lane];
                     root.currents[p].0[lane] = amps[p].0[lane];
                 }
-            }
-            if all_below(root.correction, SMALL_CORRECTION) {
-                return;
             }
         }
         for lane in 0..LANES {

@@ -2,6 +2,9 @@
 
 #![allow(dead_code, reason = "each test and bench uses its own part")]
 
+pub mod random;
+pub mod signals;
+
 use std::path::PathBuf;
 use std::sync::Arc;
 
