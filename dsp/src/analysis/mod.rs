@@ -1,5 +1,7 @@
 //! Figures of a stage: operating point, small signal, steady state.
 
+mod cycle;
+mod headroom;
 mod intermodulation;
 mod noise;
 mod operating_point;
@@ -7,12 +9,16 @@ mod ratings;
 mod refine;
 mod small_signal;
 mod steady_state;
+mod sweep;
 mod tone;
 
+pub use cycle::{Cycle, TubeCycle};
+pub use headroom::{Bound, NotReached, Reached, headroom};
 pub use intermodulation::{Intermodulation, TonePair};
 pub use noise::{Noise, a_weighting, supply_transfer};
 pub use operating_point::{Meter, OperatingPoint, PartStress, TubePoint};
 pub use ratings::{Limit, TubeStress, cold_volts, tube_stresses, tube_type};
 pub use small_signal::{Response, SmallSignal};
 pub use steady_state::{NoSteadyState, Period, bins, harmonics, steady_state};
+pub use sweep::{Band, band, frequencies, level_sweep, levels, ripple_rejection_db};
 pub use tone::Tone;
