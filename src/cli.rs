@@ -31,6 +31,7 @@ Example:  platewright bias stage.toml
     /// Measure gain, harmonics and response of every configuration
     #[command(after_help = "\
 Example:  platewright measure stage.toml --tone 1000:0.5 --frequencies 20,1k,20k
+          platewright measure stage.toml --headroom --noise --imd smpte,difference --play take.wav
           platewright measure stage.toml --tone 100:0.5 --tone 1k:0.5 --json")]
     Measure(MeasureArguments),
     /// Render recordings through every configuration
@@ -82,11 +83,58 @@ pub struct MeasureArguments {
     /// Frequencies to measure gain, phase and impedances at, separated by commas
     #[arg(long, value_name = "F,F…", num_args = 1..)]
     pub frequencies: Vec<String>,
+    /// Sweep the level (THD, harmonics and gain into clipping) or the frequency (response, impedances, −3 dB points)
+    #[arg(long, value_name = "WHAT", num_args = 1..)]
+    pub sweep: Vec<SweepKind>,
+    /// Intermodulation of these pairs of tones, separated by commas: smpte, din, difference
+    #[arg(long, value_name = "PAIRS", num_args = 1..)]
+    pub imd: Vec<String>,
+    /// Noise at output and input, 20 Hz to 20 kHz (a best case)
+    #[arg(long)]
+    pub noise: bool,
+    /// The levels at which THD, compression, grid current and cut-off set in
+    #[arg(long)]
+    pub headroom: bool,
+    /// A profile file: how far each configuration misses the harmonics it wants
+    #[arg(long, value_name = "FILE")]
+    pub profile: Option<PathBuf>,
+    /// Recordings (WAV) whose true peak the headroom is also given over; repeat it for more
+    #[arg(long = "play", value_name = "FILE")]
+    pub play: Vec<PathBuf>,
     /// Level of everything that does not name its own, V rms at the input [default: a quarter of source.full_scale]
     #[arg(long, value_name = "V")]
     pub level: Option<String>,
+    /// Write every figure to a CSV file, one a row
+    #[arg(long, value_name = "FILE")]
+    pub csv: Option<PathBuf>,
+    #[command(flatten)]
+    pub units: UnitArguments,
     #[command(flatten)]
     pub figures: FigureArguments,
+}
+
+/// What a sweep goes over.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum SweepKind {
+    /// Level of a 1 kHz tone
+    Level,
+    /// Frequency, 1 Hz to 1 MHz
+    Frequency,
+}
+
+/// How levels are shown in tables.
+#[derive(Clone, Copy, Debug, Args)]
+#[group(multiple = false)]
+pub struct UnitArguments {
+    /// Show levels in volts (the default)
+    #[arg(long)]
+    pub volts: bool,
+    /// Show levels in dBu, over 0.7746 V
+    #[arg(long)]
+    pub dbu: bool,
+    /// Show levels in dBV, over 1 V
+    #[arg(long)]
+    pub dbv: bool,
 }
 
 /// Arguments of `render`.
@@ -118,6 +166,14 @@ pub struct CompareArguments {
     /// Level of the figures, V rms at the input [default: a quarter of source.full_scale]
     #[arg(long, value_name = "V")]
     pub level: Option<String>,
+    /// A profile file: rank the configurations by how far they miss the harmonics it wants
+    #[arg(long, value_name = "FILE")]
+    pub profile: Option<PathBuf>,
+    /// Write every figure to this CSV file too, one a row
+    #[arg(long, value_name = "FILE")]
+    pub csv: Option<PathBuf>,
+    #[command(flatten)]
+    pub units: UnitArguments,
     #[command(flatten)]
     pub sound: SoundArguments,
     #[command(flatten)]

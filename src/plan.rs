@@ -2,9 +2,11 @@
 
 use std::path::PathBuf;
 
+use platewright_dsp::analysis::TonePair;
+
 use crate::cli::{
     Arguments, BiasArguments, Command, CompareArguments, DemoArguments, FigureArguments, IntoArguments,
-    MeasureArguments, RenderArguments, SampleFormat, SoundArguments,
+    MeasureArguments, RenderArguments, SampleFormat, SoundArguments, SweepKind, UnitArguments,
 };
 use crate::failure::RequestError;
 use crate::iec60062;
@@ -56,8 +58,24 @@ pub struct MeasurePlan {
     pub tones: Vec<Tone>,
     /// Frequencies in the order given, Hz.
     pub frequencies: Vec<f64>,
+    /// Sweeps.
+    pub sweep: Vec<SweepKind>,
+    /// Pairs of tones in the order given.
+    pub imd: Vec<TonePair>,
+    /// Whether the noise is wanted.
+    pub noise: bool,
+    /// Whether the headroom is wanted.
+    pub headroom: bool,
+    /// A target profile.
+    pub profile: Option<PathBuf>,
+    /// Recordings that the headroom is given over.
+    pub play: Vec<PathBuf>,
     /// Level of everything that does not name its own, V rms; none is a quarter of full scale.
     pub level: Option<f64>,
+    /// Where the figures go as CSV.
+    pub csv: Option<PathBuf>,
+    /// How levels are shown.
+    pub levels: LevelUnit,
     /// How figures are handed over.
     pub figures: Figures,
 }
@@ -88,6 +106,12 @@ pub struct ComparePlan {
     pub into: Into,
     /// Level of the figures, V rms; none is a quarter of full scale.
     pub level: Option<f64>,
+    /// A target profile.
+    pub profile: Option<PathBuf>,
+    /// Where the figures go as CSV.
+    pub csv: Option<PathBuf>,
+    /// How levels are shown.
+    pub levels: LevelUnit,
     /// How sound is rendered.
     pub sound: Sound,
     /// How figures are handed over.
@@ -101,6 +125,18 @@ pub struct DemoPlan {
     pub into: Into,
     /// How figures are handed over.
     pub figures: Figures,
+}
+
+/// How levels are shown.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub enum LevelUnit {
+    /// Volts.
+    #[default]
+    Volts,
+    /// Over 0.7746 V, the voltage of 1 mW in 600 Ω.
+    Dbu,
+    /// Over 1 V.
+    Dbv,
 }
 
 /// How figures are handed over.
@@ -183,7 +219,22 @@ impl MeasurePlan {
             .map(|item| HERTZ.value("--frequencies", item, item))
             .collect::<Result<_, _>>()?;
         let level = LEVEL.option("--level", arguments.level.as_deref())?;
-        Ok(Self { stage, tones, frequencies, level, figures: arguments.figures.into() })
+        let imd = items(&arguments.imd).map(tone_pair).collect::<Result<_, _>>()?;
+        Ok(Self {
+            stage,
+            tones,
+            frequencies,
+            sweep: arguments.sweep,
+            imd,
+            noise: arguments.noise,
+            headroom: arguments.headroom,
+            profile: arguments.profile,
+            play: arguments.play,
+            level,
+            csv: arguments.csv,
+            levels: arguments.units.into(),
+            figures: arguments.figures.into(),
+        })
     }
 }
 
@@ -206,6 +257,9 @@ impl ComparePlan {
             play: arguments.play.files,
             into: arguments.into.into(),
             level: LEVEL.option("--level", arguments.level.as_deref())?,
+            profile: arguments.profile,
+            csv: arguments.csv,
+            levels: arguments.units.into(),
             sound: Sound::new(&arguments.sound)?,
             figures: arguments.figures.into(),
         })
@@ -215,6 +269,16 @@ impl ComparePlan {
 impl From<FigureArguments> for Figures {
     fn from(arguments: FigureArguments) -> Self {
         Self { json: arguments.json, strict: arguments.strict }
+    }
+}
+
+impl From<UnitArguments> for LevelUnit {
+    fn from(arguments: UnitArguments) -> Self {
+        match (arguments.dbu, arguments.dbv) {
+            (true, _) => Self::Dbu,
+            (_, true) => Self::Dbv,
+            _ => Self::Volts,
+        }
     }
 }
 
@@ -303,6 +367,12 @@ fn tone(item: &str) -> Result<Tone, RequestError> {
     let frequency = HERTZ.value("--tone", item, frequency)?;
     let level = LEVEL.value("--tone", item, level)?;
     Ok(Tone { frequency, level })
+}
+
+fn tone_pair(item: &str) -> Result<TonePair, RequestError> {
+    let pairs = [TonePair::Smpte, TonePair::Din, TonePair::Difference];
+    let found = pairs.into_iter().find(|pair| pair.key() == item);
+    found.ok_or_else(|| wrong_item("--imd", item, "no such pair of tones", "write smpte, din or difference"))
 }
 
 fn oversample(text: &str) -> Result<usize, RequestError> {

@@ -4,6 +4,8 @@ use std::fs::{self, File};
 use std::io::{BufReader, Read, Seek, SeekFrom};
 use std::path::{Path, PathBuf};
 
+use platewright_dsp::signal::LevelMeter;
+
 use super::error::RecordingProblem as Problem;
 use super::samples::Coding;
 use super::wav_header::{self, HeaderError, WavHeader};
@@ -81,6 +83,23 @@ impl Recording {
             peak = planes.iter().flatten().fold(peak, |peak, sample| peak.max(sample.abs()));
         }
         Ok(peak)
+    }
+
+    /// The largest true peak of all channels (ITU-R BS.1770-4, annex 2), 1.0 being full scale; reads the whole file.
+    ///
+    /// # Errors
+    /// The file can no longer be read, or the user interrupts.
+    pub fn true_peak(&self) -> Result<f64, AudioError> {
+        let Ok(mut meter) = LevelMeter::new(self.channels(), self.sample_rate()) else {
+            // More channels than a loudness meter takes: the sample peak is the next best.
+            return self.peak();
+        };
+        let mut blocks = self.blocks()?;
+        let mut planes = vec![Vec::new(); self.channels()];
+        while blocks.read(&mut planes, CHECK_FRAMES)? > 0 {
+            meter.add(&planes);
+        }
+        Ok(meter.finish().true_peak)
     }
 
     /// The samples from the start, in blocks.

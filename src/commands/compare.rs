@@ -2,10 +2,12 @@
 
 use std::path::PathBuf;
 
+use platewright_dsp::analysis::TonePair;
+
 use crate::audio_files::{OutputPlan, Recording};
 use crate::failure::{Failure, Outcome};
 use crate::figures::{Asked, AskedTone, Figures, gather};
-use crate::plan::{self, ComparePlan};
+use crate::plan::{self, ComparePlan, LevelUnit};
 use crate::rendering::{self, Job};
 use crate::stage_file::StageFile;
 use crate::{show, terminal};
@@ -34,6 +36,7 @@ pub fn run(plan: &ComparePlan) -> Result<Outcome, Failure> {
         extras: &[],
         into: &plan.into,
         level: plan.level,
+        levels: plan.levels,
         sound: &plan.sound,
     };
     comparison.run(plan.figures)
@@ -53,6 +56,8 @@ pub struct Comparison<'a> {
     pub into: &'a plan::Into,
     /// Level of the figures, V rms; none is a quarter of full scale.
     pub level: Option<f64>,
+    /// How levels are shown.
+    pub levels: LevelUnit,
     /// How sound is rendered.
     pub sound: &'a plan::Sound,
 }
@@ -68,12 +73,12 @@ impl Comparison<'_> {
         files.extend([REPORT, SUMMARY].map(PathBuf::from));
         files.extend(self.extras.iter().map(|(name, _)| PathBuf::from(name)));
         let outputs = OutputPlan::check(&self.into.folder, self.into.replace, &files, self.inputs)?;
-        let mut figures = gather(self.file, &self.asked())?;
+        let mut figures = gather(self.file, &self.asked()?)?;
 
         let folder = outputs.create()?;
         let (mut staged, renders) = job.run(&folder)?;
         let warnings = rendering::warnings(&renders);
-        let tables = summary(&figures, &show::renders(&renders));
+        let tables = summary(&figures, &show::renders(&renders), self.levels);
         figures.renders = Some(renders);
         staged.push(folder.stage_contents(REPORT, (figures.to_json()? + "\n").as_bytes())?);
         staged.push(folder.stage_contents(SUMMARY, self.summary_file(&figures, &tables).as_bytes())?);
@@ -90,9 +95,20 @@ impl Comparison<'_> {
         Ok(Outcome::of(printed.strict, figures.warn() || !warnings.is_empty()))
     }
 
-    fn asked(&self) -> Asked {
+    fn asked(&self) -> Result<Asked, Failure> {
         let tone = |frequency| AskedTone { frequency, level: self.level };
-        Asked { tones: Some(TONES.map(tone).to_vec()), frequencies: Some(FREQUENCIES.to_vec()), meter_ohms: None }
+        Ok(Asked {
+            tones: Some(TONES.map(tone).to_vec()),
+            frequencies: Some(FREQUENCIES.to_vec()),
+            level: self.level,
+            level_sweep: true,
+            frequency_sweep: true,
+            imd: Some(vec![TonePair::Smpte, TonePair::Din, TonePair::Difference]),
+            noise: true,
+            headroom: true,
+            play_peak: Some(super::true_peak(self.recordings)?),
+            ..Asked::default()
+        })
     }
 
     fn summary_file(&self, figures: &Figures, tables: &[String]) -> String {
@@ -102,12 +118,9 @@ impl Comparison<'_> {
     }
 }
 
-fn summary(figures: &Figures, renders: &str) -> Vec<String> {
-    let configurations = &figures.configurations;
-    [show::at_a_glance(configurations).into(), show::tones(configurations), show::responses(configurations)]
-        .into_iter()
-        .flatten()
-        .map(|table| table.render(show::WIDTH))
-        .chain([renders.to_owned()])
-        .collect()
+fn summary(figures: &Figures, renders: &str, unit: LevelUnit) -> Vec<String> {
+    let mut tables = vec![show::at_a_glance(&figures.configurations, unit).render(show::WIDTH)];
+    tables.extend(show::measured(&figures.configurations, unit));
+    tables.push(renders.to_owned());
+    tables
 }

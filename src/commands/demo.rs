@@ -6,7 +6,7 @@ use std::path::Path;
 use super::compare::Comparison;
 use crate::audio_files::Recording;
 use crate::failure::{Failure, Outcome, WorkError};
-use crate::plan::{DemoPlan, Sound};
+use crate::plan::{DemoPlan, LevelUnit, Sound};
 
 /// The built-in stage.
 pub const STAGE: &str = include_str!("../demo/stage.toml");
@@ -33,6 +33,7 @@ pub fn run(plan: &DemoPlan) -> Result<Outcome, Failure> {
         extras: &[("stage.toml", STAGE.as_bytes()), (RECORDING_NAME, RECORDING)],
         into: &plan.into,
         level: None,
+        levels: LevelUnit::default(),
         sound: &Sound::default(),
     };
     comparison.run(plan.figures)

@@ -1,5 +1,6 @@
 //! `platewright measure`: figures of every configuration.
 
+use crate::cli::SweepKind;
 use crate::failure::{Failure, Outcome};
 use crate::figures::{Asked, AskedTone, gather};
 use crate::plan::MeasurePlan;
@@ -11,29 +12,38 @@ const USUAL_TONE: f64 = 1000.0;
 /// Runs the command.
 ///
 /// # Errors
-/// [`Failure`] where the stage file is wrong or a configuration settles nowhere.
+/// [`Failure`] where the stage file, a recording or the profile is wrong, or a configuration settles nowhere.
 pub fn run(plan: &MeasurePlan) -> Result<Outcome, Failure> {
     let file = super::stage(&plan.stage)?;
-    let figures = gather(&file, &asked(plan))?;
-    let tables: Vec<String> = [show::tones(&figures.configurations), show::responses(&figures.configurations)]
-        .into_iter()
-        .flatten()
-        .map(|table| table.render(show::WIDTH))
-        .collect();
-    super::print_figures(&figures, plan.figures.json, &tables)?;
+    let recordings = super::recordings(&plan.play)?;
+    let play_peak = if recordings.is_empty() { None } else { Some(super::true_peak(&recordings)?) };
+    let figures = gather(&file, &Asked { play_peak, ..asked(plan) })?;
+    super::print_figures(&figures, plan.figures.json, &show::measured(&figures.configurations, plan.levels))?;
     Ok(Outcome::of(plan.figures.strict, figures.warn()))
 }
 
 fn asked(plan: &MeasurePlan) -> Asked {
     let tone = |t: &crate::plan::Tone| AskedTone { frequency: t.frequency, level: Some(t.level) };
     let mut tones: Vec<AskedTone> = plan.tones.iter().map(tone).collect();
+    let (level_sweep, frequency_sweep) =
+        (plan.sweep.contains(&SweepKind::Level), plan.sweep.contains(&SweepKind::Frequency));
+    let nothing = tones.is_empty()
+        && plan.frequencies.is_empty()
+        && plan.imd.is_empty()
+        && !(plan.noise || plan.headroom || level_sweep || frequency_sweep);
     // A person who asks for nothing wants to see something; a program that reads JSON wants what it asked for.
-    if tones.is_empty() && plan.frequencies.is_empty() && !plan.figures.json {
+    if nothing && !plan.figures.json {
         tones.push(AskedTone { frequency: USUAL_TONE, level: plan.level });
     }
     Asked {
         tones: (!tones.is_empty()).then_some(tones),
         frequencies: (!plan.frequencies.is_empty()).then(|| plan.frequencies.clone()),
-        meter_ohms: None,
+        level: plan.level,
+        level_sweep,
+        frequency_sweep,
+        imd: (!plan.imd.is_empty()).then(|| plan.imd.clone()),
+        noise: plan.noise,
+        headroom: plan.headroom,
+        ..Asked::default()
     }
 }

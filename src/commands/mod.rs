@@ -71,6 +71,15 @@ fn recordings(paths: &[PathBuf]) -> Result<Vec<Recording>, Failure> {
     Ok(recordings)
 }
 
+/// The largest true peak (ITU-R BS.1770-4, annex 2) of all channels of all recordings, as a part of full scale.
+fn true_peak(recordings: &[Recording]) -> Result<f64, Failure> {
+    let mut largest: f64 = 0.0;
+    for recording in recordings {
+        largest = largest.max(recording.true_peak()?);
+    }
+    Ok(largest)
+}
+
 /// Prints figures as JSON, or their tables, with the warnings first.
 fn print_figures(figures: &Figures, json: bool, tables: &[String]) -> Result<(), Failure> {
     if json {

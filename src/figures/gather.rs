@@ -1,10 +1,10 @@
 //! Gathers what was asked of every configuration.
 
-use platewright_dsp::analysis::OperatingPoint;
+use platewright_dsp::analysis::{OperatingPoint, TonePair};
 use platewright_dsp::circuit::Network;
 use rayon::prelude::*;
 
-use super::{ConfigurationFigures, Figures, SCHEMA, point, tone};
+use super::{ConfigurationFigures, Figures, SCHEMA, ToneFigures, headroom, imd, noise, point, sweep, tone};
 use crate::failure::{Failure, WorkError};
 use crate::stage_file::{Configuration, StageFile};
 
@@ -15,6 +15,20 @@ pub struct Asked {
     pub tones: Option<Vec<AskedTone>>,
     /// Frequencies of the small-signal response, Hz.
     pub frequencies: Option<Vec<f64>>,
+    /// Level of intermodulation and of the frequency sweep's THD, V rms; `None` as for a tone.
+    pub level: Option<f64>,
+    /// Whether to sweep the level.
+    pub level_sweep: bool,
+    /// Whether to sweep the frequency.
+    pub frequency_sweep: bool,
+    /// Pairs of tones, in the order wanted.
+    pub imd: Option<Vec<TonePair>>,
+    /// Whether to work out the noise.
+    pub noise: bool,
+    /// Whether to look for the headroom.
+    pub headroom: bool,
+    /// True peak of the recordings played, as a part of full scale.
+    pub play_peak: Option<f64>,
     /// Input resistance of a meter to hold to every node, Ω.
     pub meter_ohms: Option<f64>,
 }
@@ -48,13 +62,23 @@ fn one(configuration: &Configuration, asked: &Asked) -> Result<ConfigurationFigu
         remedy: "check its resistors and its supply for values far from any real stage".to_owned(),
     })?;
     let response = |f: &Vec<f64>| f.par_iter().map(|&f| tone::response(&network, &at_rest, f)).collect();
-    let usual = USUAL_LEVEL * configuration.stage.source.full_scale;
-    let tone = |t: &AskedTone| tone::tone(&network, t.frequency, t.level.unwrap_or(usual));
-    let tones = |t: &Vec<AskedTone>| t.par_iter().map(tone).collect();
+    let full_scale = configuration.stage.source.full_scale;
+    let level = |asked: Option<f64>| asked.unwrap_or(USUAL_LEVEL * full_scale);
+    let tone = |t: &AskedTone| tone::tone(&network, t.frequency, level(t.level));
+    let tones: Option<Vec<ToneFigures>> = asked.tones.as_ref().map(|t| t.par_iter().map(tone).collect());
+    let pair = |&pair: &TonePair| imd::of(&network, pair, level(asked.level));
+    let first_tone = tones.as_ref().and_then(|t| t.first());
     Ok(ConfigurationFigures {
         name: configuration.name.clone(),
         operating_point: point::operating_point(configuration, &network, &at_rest, asked.meter_ohms),
         response: asked.frequencies.as_ref().map(response),
-        tones: asked.tones.as_ref().map(tones),
+        level_sweep: asked.level_sweep.then(|| sweep::over_level(&network, full_scale)),
+        frequency_sweep: asked
+            .frequency_sweep
+            .then(|| sweep::over_frequency(&network, &at_rest, level(asked.level))),
+        imd: asked.imd.as_ref().map(|pairs| pairs.par_iter().map(pair).collect()),
+        noise: asked.noise.then(|| noise::of(&network, &at_rest, full_scale, first_tone)),
+        headroom: asked.headroom.then(|| headroom::of(&network, &at_rest, full_scale, asked.play_peak)),
+        tones,
     })
 }

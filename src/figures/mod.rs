@@ -2,14 +2,20 @@
 //!
 //! A figure that cannot be had is `null`, and the object's `why` maps its key to the reason.
 
+mod bench;
 mod gather;
+mod headroom;
+mod imd;
+mod noise;
 mod point;
+mod sweep;
 mod tone;
 
 use std::collections::BTreeMap;
 
 use serde::{Deserialize, Serialize};
 
+pub use bench::*;
 pub use gather::{Asked, AskedTone, gather};
 
 use crate::failure::{Failure, WorkError};
@@ -66,6 +72,21 @@ pub struct ConfigurationFigures {
     /// Tones, when asked.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub tones: Option<Vec<ToneFigures>>,
+    /// Level sweep, when asked.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub level_sweep: Option<Vec<LevelFigures>>,
+    /// Frequency sweep with its −3 dB points, when asked.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub frequency_sweep: Option<FrequencySweepFigures>,
+    /// Intermodulation, when asked.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub imd: Option<Vec<ImdFigures>>,
+    /// Noise, when asked.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub noise: Option<NoiseFigures>,
+    /// Headroom, when asked.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub headroom: Option<HeadroomFigures>,
 }
 
 /// The stage at rest.

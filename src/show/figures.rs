@@ -2,6 +2,7 @@
 
 use super::{SideBySide, units};
 use crate::figures::{ConfigurationFigures, OperatingPointFigures, RatingFigures, TubeFigures};
+use crate::plan::LevelUnit;
 
 /// The operating points side by side.
 pub fn operating_points(configurations: &[ConfigurationFigures]) -> SideBySide {
@@ -16,7 +17,7 @@ pub fn operating_points(configurations: &[ConfigurationFigures]) -> SideBySide {
     table
 }
 
-fn table(configurations: &[ConfigurationFigures]) -> SideBySide {
+pub(super) fn table(configurations: &[ConfigurationFigures]) -> SideBySide {
     SideBySide::of(configurations.iter().map(|c| c.name.as_str()))
 }
 
@@ -163,15 +164,16 @@ fn meter_rows(table: &mut SideBySide, points: &Points<'_>) {
 }
 
 /// The tones side by side; `None` where none was asked.
-pub fn tones(configurations: &[ConfigurationFigures]) -> Option<SideBySide> {
+pub fn tones(configurations: &[ConfigurationFigures], unit: LevelUnit) -> Option<SideBySide> {
     let count = configurations.iter().filter_map(|c| c.tones.as_ref()).map(Vec::len).max()?;
     let mut table = table(configurations);
     for index in 0..count {
         let each = || configurations.iter().map(move |c| c.tones.as_ref().and_then(|t| t.get(index)));
         let Some(first) = each().flatten().next() else { continue };
-        table.heading(&format!("{} at {} rms", units::hertz(first.frequency), units::volts(first.input_rms)));
+        table.heading(&format!("{} at {} rms", units::hertz(first.frequency), units::level(first.input_rms, unit)));
         table.row("gain", each().map(|t| t.map(|t| or_dash(t.gain_db, units::decibels))));
-        table.row("output", each().map(|t| t.map(|t| or_dash(t.output_fundamental_rms, units::volts))));
+        table
+            .row("output", each().map(|t| t.map(|t| or_dash(t.output_fundamental_rms, |v| units::level(v, unit)))));
         table.row("THD_F", each().map(|t| t.map(|t| or_dash(t.thd_percent, units::percent))));
         table.row("THD_R", each().map(|t| t.map(|t| or_dash(t.thd_r_percent, units::percent))));
         for order in 2..=first.thd_orders {
@@ -188,7 +190,7 @@ pub fn tones(configurations: &[ConfigurationFigures]) -> Option<SideBySide> {
     Some(table)
 }
 
-fn or_dash(value: Option<f64>, show: fn(f64) -> String) -> String {
+pub(super) fn or_dash(value: Option<f64>, show: impl Fn(f64) -> String) -> String {
     value.map_or_else(|| "–".to_owned(), show)
 }
 
@@ -213,11 +215,11 @@ fn size([re, im]: [f64; 2]) -> f64 {
 }
 
 /// The few figures that a choice begins with, at the first tone that was measured.
-pub fn at_a_glance(configurations: &[ConfigurationFigures]) -> SideBySide {
+pub fn at_a_glance(configurations: &[ConfigurationFigures], unit: LevelUnit) -> SideBySide {
     let mut table = table(configurations);
     let tone = || configurations.iter().map(|c| c.tones.as_ref().and_then(|t| t.first()));
     if let Some(first) = tone().flatten().next() {
-        let at = format!("{} at {} rms", units::hertz(first.frequency), units::volts(first.input_rms));
+        let at = format!("{} at {} rms", units::hertz(first.frequency), units::level(first.input_rms, unit));
         table.heading(&format!("At a glance, {at}"));
     }
     table.row("gain", tone().map(|t| t.and_then(|t| t.gain_db).map(units::decibels)));

@@ -1,8 +1,27 @@
 //! Numbers with the digits a designer reads and the unit beside them.
 
-/// Volts: millivolts below a tenth.
+use platewright_dsp::portable::decibels as decibels_of;
+
+use crate::plan::LevelUnit;
+
+/// Volts: millivolts below a tenth, microvolts below a tenth of those.
 pub fn volts(value: f64) -> String {
-    if value.abs() < 0.0995 && value != 0.0 { format!("{:.2} mV", 1e3 * value) } else { short(value, "V") }
+    match value.abs() {
+        size if size >= 0.0995 || size == 0.0 => short(value, "V"),
+        size if size >= 0.0995e-3 => format!("{:.2} mV", 1e3 * value),
+        _ => format!("{:.2} µV", 1e6 * value),
+    }
+}
+
+/// A level in V rms as the user wants to read levels.
+pub fn level(volts_rms: f64, unit: LevelUnit) -> String {
+    /// The voltage of 1 mW in 600 Ω.
+    const DBU_VOLTS: f64 = 0.774_596_669_241_483_4;
+    match unit {
+        LevelUnit::Volts => volts(volts_rms),
+        LevelUnit::Dbu => format!("{:.2} dBu", decibels_of(volts_rms / DBU_VOLTS)),
+        LevelUnit::Dbv => format!("{:.2} dBV", decibels_of(volts_rms)),
+    }
 }
 
 /// Amperes as mA, small ones as µA or nA.
@@ -80,6 +99,8 @@ mod tests {
         assert_eq!(volts(291.2345), "291.2 V");
         assert_eq!(volts(0.01234), "12.34 mV");
         assert_eq!(volts(-3.4567), "-3.457 V");
+        assert_eq!(volts(3.4e-6), "3.40 µV");
+        assert_eq!(level(0.7746, LevelUnit::Dbu), "0.00 dBu");
         assert_eq!(amperes(4.321e-3), "4.321 mA");
         assert_eq!(amperes(3.2e-8), "32.00 nA");
         assert_eq!(ohms(33_000.0), "33.00 kΩ");

@@ -1,0 +1,46 @@
+//! Noise.
+
+use platewright_dsp::analysis::{Noise, OperatingPoint, SmallSignal};
+use platewright_dsp::circuit::Network;
+use platewright_dsp::portable::{decibels, magnitude};
+
+use super::{NoiseFigures, ToneFigures, Why};
+
+/// What the figures leave out.
+const NOTE: &str = "best case: thermal noise at 300 K and 2.5/gm a triode; without flicker and grid noise";
+
+/// The noise of a network whose source reaches `full_scale` V rms, and the THD+N of `tone` where there is one.
+pub fn of(network: &Network, point: &OperatingPoint, full_scale: f64, tone: Option<&ToneFigures>) -> NoiseFigures {
+    let small = SmallSignal::new(network, point);
+    let noise = Noise::of(&small);
+    let gain = small.at(1000.0).map(|r| magnitude(r.gain)).filter(|&gain| gain > 0.0);
+    let mut why = Why::new();
+    if noise.is_none() {
+        why.extend(
+            ["output_rms", "output_rms_a", "input_rms", "signal_to_noise_dB"].map(|key| {
+                (key.to_owned(), "the network has no solution somewhere from 20 Hz to 20 kHz".to_owned())
+            }),
+        );
+    } else if gain.is_none() {
+        why.extend(
+            ["input_rms", "signal_to_noise_dB"]
+                .map(|key| (key.to_owned(), "nothing reaches the output".to_owned())),
+        );
+    }
+    let both = noise.zip(gain);
+    NoiseFigures {
+        output_rms: noise.map(|n| n.output_rms),
+        output_rms_a: noise.map(|n| n.output_rms_a),
+        input_rms: both.map(|(n, gain)| n.output_rms / gain),
+        signal_to_noise_db: both.map(|(n, gain)| decibels(full_scale * gain / n.output_rms)),
+        thd_n_percent: tone.zip(noise).and_then(|(tone, noise)| thd_n(tone, noise)),
+        note: NOTE.to_owned(),
+        why,
+    }
+}
+
+/// THD+N = √(ΣH² + noise²)/H1.
+fn thd_n(tone: &ToneFigures, noise: Noise) -> Option<f64> {
+    let fundamental = tone.output_fundamental_rms?;
+    Some(libm::hypot(tone.thd_percent?, 100.0 * noise.output_rms / fundamental))
+}
