@@ -6,7 +6,7 @@
 use super::adaptor::Adaptor;
 use super::rest::Rest;
 use crate::circuit::nodal::{incidence, triode_ports};
-use crate::circuit::{Network, Node};
+use crate::circuit::{Network, Node, Terminal};
 use crate::linear::Matrix;
 
 /// Modes whose eigenvalue is nearer to −1 than this carry no voltage: the loops that a triode's three capacitances make.
@@ -60,6 +60,9 @@ impl Modes {
         let to_modes = vectors.transposed();
         let triodes = incidence(network.nodes, &triode_ports(network));
         let nodes_by_mode = adaptor.nodes_by_wave.times(&vectors);
+        let eigenvalue: Vec<f64> = (kept.iter().enumerate())
+            .map(|(mode, &k)| slow_by_loss(network, eigenvalue[k], &column(&nodes_by_mode, mode)))
+            .collect();
         let root_by_source = triodes.times(&adaptor.nodes_by_source);
         let mode_by_source = to_modes.times(&adaptor.reflected_by_source);
         let mut wave_by_mode = vectors;
@@ -78,7 +81,7 @@ impl Modes {
         let less = |at_rest: f64, by_current: &[f64]| at_rest - dot(by_current, amps);
         Some(Modes {
             rate,
-            eigenvalue: kept.iter().map(|&k| eigenvalue[k]).collect(),
+            eigenvalue,
             mode_by_signal: column(&mode_by_source, 0),
             mode_constant: (0..kept.len()).map(|k| less(0.0, mode_by_current.row(k))).collect(),
             mode_by_current,
@@ -111,6 +114,21 @@ impl Modes {
     pub fn rate(&self) -> f64 {
         self.rate
     }
+}
+
+/// The eigenvalue of a mode from the power that its unit wave loses in the resistors, 1 − λ² = 4·P, where it is slow.
+///
+/// A sum of squares knows a slow mode's loss better than the scattering does, and is never negative: no rounding makes a
+/// passive network grow.
+fn slow_by_loss(network: &Network, eigenvalue: f64, nodes: &[f64]) -> f64 {
+    if eigenvalue < 0.9 {
+        return eigenvalue;
+    }
+    let at = |terminal: Terminal| terminal.map_or(0.0, |node| nodes[node]);
+    let square = |volts: f64| volts * volts;
+    let parts: f64 = network.resistors.iter().map(|r| square(at(r.from) - at(r.to)) / r.value).sum();
+    let sources: f64 = network.sources.iter().map(|s| square(at(s.node)) / s.resistance).sum();
+    (1.0 - 4.0 * (parts + sources)).max(0.0).sqrt()
 }
 
 fn dot(a: &[f64], b: &[f64]) -> f64 {
