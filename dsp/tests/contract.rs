@@ -6,6 +6,7 @@ mod problems;
 use std::sync::OnceLock;
 
 use platewright_dsp::circuit::Stage;
+use platewright_dsp::triode::Law;
 use platewright_dsp::wave::{Engine, Machine};
 use platewright_dsp::{F64x4, Kernel, LANES};
 use problems::signals::{chord, noise};
@@ -17,28 +18,37 @@ const RATE: f64 = 384e3;
 struct Case {
     name: String,
     machines: Vec<Machine>,
+    supply: [f64; LANES],
+    own_law: bool,
 }
 
 fn cases() -> &'static [Case] {
     static CASES: OnceLock<Vec<Case>> = OnceLock::new();
     CASES.get_or_init(|| {
         let stages = topologies().into_iter().chain(known().into_iter().map(|k| (k.name, k.stage)));
-        stages.map(|(name, stage)| Case { name, machines: unlike(&stage) }).collect()
+        stages.map(|(name, stage)| Case::new(name, &stage)).collect()
     })
 }
 
-fn unlike(stage: &Stage) -> Vec<Machine> {
-    let first = Machine::new(stage, RATE).unwrap();
-    let other = |lane: usize| {
-        let factor = 1.0 + 0.17 * lane as f64;
-        let mut stage = stage.clone();
-        stage.supply.voltage *= factor;
-        stage.gain.plate_resistor /= factor;
-        stage.gain.cathode_resistor *= factor;
-        stage.output.load_resistance *= factor;
-        first.with_parts_of(&stage).unwrap()
-    };
-    (0..LANES).map(|lane| if lane == 0 { first.clone() } else { other(lane) }).collect()
+impl Case {
+    fn new(name: String, stage: &Stage) -> Case {
+        let stages: [Stage; LANES] = std::array::from_fn(|lane| {
+            let factor = 1.0 + 0.17 * lane as f64;
+            let mut stage = stage.clone();
+            stage.supply.voltage *= factor;
+            stage.gain.plate_resistor /= factor;
+            stage.gain.cathode_resistor *= factor;
+            stage.output.load_resistance *= factor;
+            stage
+        });
+        let first = Machine::new(&stages[0], RATE).unwrap();
+        Case {
+            name,
+            machines: stages.iter().map(|s| first.with_parts_of(s).unwrap()).collect(),
+            supply: stages.each_ref().map(|s| s.supply.voltage),
+            own_law: matches!(stage.gain.tube.section.law, Law::TwoSection(_)),
+        }
+    }
 }
 
 /// A different signal a lane: a chord, one far too loud, noise, and a square wave.
@@ -163,7 +173,9 @@ contracts! {
         let (later, at_once) = (run(&mut engine, &input), fresh(&case.machines, &input));
         for k in 0..LANES {
             let at_once = lane(&at_once, k);
-            let miss = largest(lane(&later, k).iter().zip(&at_once).map(|(a, b)| a - b)) / largest(at_once);
+            // Closed pots leave nothing but rounding.
+            let size = largest(at_once.iter().copied()).max(1.0);
+            let miss = largest(lane(&later, k).iter().zip(&at_once).map(|(a, b)| a - b)) / size;
             assert!(miss < 1e-9, "{} lane {k}: delayed signal misses by {miss:e}", case.name);
         }
     }
@@ -213,8 +225,10 @@ contracts! {
         let mut engine = Engine::new(&case.machines, Kernel::detect()).unwrap();
         let output = run(&mut engine, &input);
         for k in 0..LANES {
+            // A published law driven this far beyond its use may give power and pass any supply; ours may not.
+            let bound = if case.own_law { 1000.0 + case.supply[k] } else { 1e5 };
             let peak = largest(lane(&output, k));
-            assert!(peak < 3000.0, "{} lane {k}: {peak} V", case.name);
+            assert!(peak < bound, "{} lane {k}: {peak} V", case.name);
             let counts = engine.counts(k);
             assert_eq!(counts.unresolved, 0, "{} lane {k}: {counts:?}", case.name);
             let a_step = counts.newton as f64 / input.len() as f64;
@@ -281,19 +295,19 @@ fn an_opened_capacitor_keeps_its_charge() {
     // A loud tone shifts the charge away from its state of rest.
     let rest = bias(&engine);
     let loud: Vec<F64x4> =
-        problems::signals::sine(192_000, RATE, 400.0, 12.0).iter().map(|&v| F64x4([v; LANES])).collect();
+        problems::signals::sine(192_000, RATE, 400.0, 40.0).iter().map(|&v| F64x4([v; LANES])).collect();
     run(&mut engine, &loud);
     silence(&mut engine, 0.01);
     let charged = bias(&engine);
-    assert!((charged - rest).abs() > 0.2, "the tone moved the bias from {rest} V to {charged} V");
+    assert!((charged - rest).abs() > 0.08, "the tone moved the bias from {rest} V to {charged} V");
     engine.refill(0, &open).unwrap();
     silence(&mut engine, 3.0);
     let alone = bias(&engine);
-    assert!((alone - charged).abs() > 0.1, "without its capacitor the cathode went back: {alone} V, {charged} V");
+    assert!((alone - charged).abs() > 0.08, "without its capacitor the cathode went back: {alone} V, {charged} V");
     engine.refill(0, &closed).unwrap();
     silence(&mut engine, 0.001);
     let closed_again = bias(&engine);
-    assert!((closed_again - charged).abs() < 0.05, "{closed_again} V, opened at {charged} V");
+    assert!((closed_again - charged).abs() < 0.01, "{closed_again} V, opened at {charged} V");
 }
 
 #[test]

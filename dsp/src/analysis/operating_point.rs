@@ -1,13 +1,8 @@
 //! The operating point: the DC solution of the stage's own network.
 
-use crate::circuit::nodal::{conductances, incidence, source_currents, stamp, triode_ports};
 use crate::circuit::{Network, Node, Role, Terminal};
-use crate::linear::Matrix;
 use crate::triode::Currents;
-use crate::wave::root::{self, RootCounts};
-
-/// Volts to which the root is solved.
-const TOLERANCE: f64 = 1e-11;
+use crate::wave::{Rest, RootCounts};
 
 /// A stage at rest.
 #[derive(Clone, Debug)]
@@ -91,32 +86,15 @@ pub struct Meter {
 impl OperatingPoint {
     /// The DC solution of `network`, with `meter` attached where one is given. `None` where no solution is found.
     pub fn solve(network: &Network, meter: Option<Meter>) -> Option<OperatingPoint> {
-        let mut matrix = conductances(network);
-        if let Some(meter) = meter {
-            stamp(&mut matrix, network.place(meter.node)?, None, 1.0 / meter.resistance);
-        }
-        let triodes = incidence(network.nodes, &triode_ports(network));
-        let inverse = matrix.solve(Matrix::identity(network.nodes))?;
-        let constants: Vec<f64> = (0..network.sources.len()).map(|k| network.constant_volts(k)).collect();
-        let open = inverse.times_vector(&source_currents(network).times_vector(&constants));
-        let by_current = inverse.times(&triodes.transposed());
-        let mut resistance = triodes.times(&by_current);
-        for row in 0..resistance.rows() {
-            for column in 0..resistance.columns() {
-                resistance[(row, column)] = -resistance[(row, column)];
-            }
-        }
-        let offer = triodes.times_vector(&open);
+        let load = match meter {
+            Some(meter) => Some((network.place(meter.node)?, meter.resistance)),
+            None => None,
+        };
         let law = |tube: usize, vgk: f64, vpk: f64| network.triodes[tube].section.currents(vgk, vpk);
-        let solved = root::solve(&resistance, &offer, &offer, TOLERANCE, &law);
-        if solved.counts.unresolved > 0 {
-            return None;
-        }
-        let drop = by_current.times_vector(&solved.amps[..offer.len()]);
-        let volts: Vec<f64> = open.iter().zip(drop).map(|(v, d)| v - d).collect();
+        let rest = Rest::solve(network, load, &law).ok()?;
         let places = Node::ALL.into_iter().filter_map(|n| Some((n, network.place(n)?))).collect();
         let mut point =
-            OperatingPoint { tubes: Vec::new(), parts: Vec::new(), counts: solved.counts, volts, places };
+            OperatingPoint { tubes: Vec::new(), parts: Vec::new(), counts: rest.counts, volts: rest.nodes, places };
         point.tubes = point.tube_points(network);
         point.parts = point.part_stresses(network);
         Some(point)

@@ -9,7 +9,7 @@ use num_complex::Complex64;
 use crate::circuit::Network;
 use crate::linear::Matrix;
 use crate::triode::Section;
-use crate::wave::{Modes, PADDED, Sensitivity, Single, SingleState, rest};
+use crate::wave::{Modes, PADDED, Rest, Sensitivity, Single, SingleState};
 
 /// Volts on any capacitor by which a period may miss its beginning.
 const CLOSED: f64 = 1e-8;
@@ -61,18 +61,20 @@ impl std::error::Error for NoSteadyState {}
 /// If `volts.len()` is even.
 pub fn steady_state(network: &Network, volts: &[f64], rate: f64) -> Result<Period, NoSteadyState> {
     assert!(volts.len() % 2 == 1, "an odd number of steps");
-    let modes = Modes::derive(network, rate).ok_or(NoSteadyState::Network)?;
     let sections: Vec<Section> = network.triodes.iter().map(|t| t.section).collect();
+    let law = |tube: usize, vgk: f64, vpk: f64| sections[tube].currents(vgk, vpk);
+    let rest = Rest::solve(network, None, &law).map_err(|_| NoSteadyState::Network)?;
+    let modes = Modes::derive(network, rate, &rest).ok_or(NoSteadyState::Network)?;
     let padded = PADDED.into_iter().find(|&n| n >= modes.count()).ok_or(NoSteadyState::Network)?;
     match (modes.ports(), padded) {
-        (2, 6) => shoot::<2, 6>(&modes, &sections, volts),
-        (2, 8) => shoot::<2, 8>(&modes, &sections, volts),
-        (2, 10) => shoot::<2, 10>(&modes, &sections, volts),
-        (2, 12) => shoot::<2, 12>(&modes, &sections, volts),
-        (4, 6) => shoot::<4, 6>(&modes, &sections, volts),
-        (4, 8) => shoot::<4, 8>(&modes, &sections, volts),
-        (4, 10) => shoot::<4, 10>(&modes, &sections, volts),
-        (4, 12) => shoot::<4, 12>(&modes, &sections, volts),
+        (2, 6) => shoot::<2, 6>(&modes, &rest, &sections, volts),
+        (2, 8) => shoot::<2, 8>(&modes, &rest, &sections, volts),
+        (2, 10) => shoot::<2, 10>(&modes, &rest, &sections, volts),
+        (2, 12) => shoot::<2, 12>(&modes, &rest, &sections, volts),
+        (4, 6) => shoot::<4, 6>(&modes, &rest, &sections, volts),
+        (4, 8) => shoot::<4, 8>(&modes, &rest, &sections, volts),
+        (4, 10) => shoot::<4, 10>(&modes, &rest, &sections, volts),
+        (4, 12) => shoot::<4, 12>(&modes, &rest, &sections, volts),
         _ => Err(NoSteadyState::Network),
     }
 }
@@ -86,12 +88,11 @@ struct Shooting<'a, const PORTS: usize, const MODES: usize> {
 
 fn shoot<const PORTS: usize, const MODES: usize>(
     modes: &Modes,
+    rest: &Rest,
     sections: &[Section],
     volts: &[f64],
 ) -> Result<Period, NoSteadyState> {
-    let law = |tube: usize, vgk: f64, vpk: f64| sections[tube].currents(vgk, vpk);
-    let rest = rest(modes, &law).ok_or(NoSteadyState::Network)?;
-    let mut state = Single::<PORTS, MODES>::state(&rest.state, &rest.volts);
+    let mut state = Single::<PORTS, MODES>::at_rest(&rest.volts);
     let period = Period { output: vec![0.0; volts.len()], root_volts: vec![[0.0; 4]; volts.len()], shots: 0 };
     let mut shooting = Shooting { machine: Single::new(modes, sections), modes, volts, period };
     // Straight to the level first; where that fails, up from silence in strides that grow and shrink with success.

@@ -1,10 +1,9 @@
 //! A stage made ready to be stepped: its modes, its tabulated tubes and its state of rest.
 
 use super::modes::Modes;
-use super::root::{self, Solved};
+use super::rest::{NoRest, Rest};
 use crate::circuit::{Network, Stage};
-use crate::linear::Matrix;
-use crate::triode::{Currents, LawKind, TabulatedSection};
+use crate::triode::{LawKind, TabulatedSection};
 
 /// Why a stage cannot be stepped.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -26,6 +25,15 @@ impl std::fmt::Display for WaveError {
 
 impl std::error::Error for WaveError {}
 
+impl From<NoRest> for WaveError {
+    fn from(reason: NoRest) -> Self {
+        match reason {
+            NoRest::Floating => WaveError::FloatingNode,
+            NoRest::Unsolved => WaveError::NoRest,
+        }
+    }
+}
+
 /// What lanes stepped together must share: the number of triodes, their kinds of law and the padded number of modes.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, PartialOrd, Ord)]
 pub struct Shape {
@@ -39,14 +47,8 @@ pub struct Shape {
 pub struct Machine {
     pub(crate) modes: Modes,
     pub(crate) tubes: Vec<TabulatedSection>,
+    /// The state of rest of the tabulated machine.
     pub(crate) rest: Rest,
-}
-
-/// The state of rest of the tabulated machine.
-#[derive(Clone, Debug)]
-pub(crate) struct Rest {
-    pub state: Vec<f64>,
-    pub volts: Vec<f64>,
 }
 
 /// Numbers of modes that are compiled; a machine is padded to the next.
@@ -72,8 +74,8 @@ impl Machine {
     }
 
     fn assemble(network: &Network, rate: f64, tubes: Vec<TabulatedSection>) -> Result<Machine, WaveError> {
-        let modes = Modes::derive(network, rate).ok_or(WaveError::FloatingNode)?;
-        let rest = rest(&modes, &|tube, vgk, vpk| tubes[tube].currents(vgk, vpk)).ok_or(WaveError::NoRest)?;
+        let rest = Rest::solve(network, None, &|tube, vgk, vpk| tubes[tube].currents(vgk, vpk))?;
+        let modes = Modes::derive(network, rate, &rest).ok_or(WaveError::FloatingNode)?;
         Ok(Machine { modes, tubes, rest })
     }
 
@@ -88,29 +90,4 @@ impl Machine {
     pub fn modes(&self) -> &Modes {
         &self.modes
     }
-}
-
-/// The resting state of `modes` under `law`, exactly a fixed point of the step.
-pub(crate) fn rest(modes: &Modes, law: &dyn Fn(usize, f64, f64) -> Currents) -> Option<Rest> {
-    let (ports, count) = (modes.ports(), modes.count());
-    let idle = modes.resting_state(&vec![0.0; ports]);
-    let offer: Vec<f64> = (0..ports)
-        .map(|r| {
-            modes.root_constant[r] + modes.root_by_mode.row(r).iter().zip(&idle).map(|(a, b)| a * b).sum::<f64>()
-        })
-        .collect();
-    let mut resistance = Matrix::zeros(ports, ports);
-    for row in 0..ports {
-        for column in 0..ports {
-            let slow: f64 = (0..count)
-                .map(|k| {
-                    modes.root_by_mode[(row, k)] * modes.mode_by_current[(k, column)] / (1.0 - modes.eigenvalue[k])
-                })
-                .sum();
-            resistance[(row, column)] = modes.root_by_current[(row, column)] + slow;
-        }
-    }
-    let Solved { volts, amps, counts, .. } = root::solve(&resistance, &offer, &offer, 1e-10, law);
-    (counts.unresolved == 0)
-        .then(|| Rest { state: modes.resting_state(&amps[..ports]), volts: volts[..ports].to_vec() })
 }

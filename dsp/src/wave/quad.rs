@@ -143,12 +143,14 @@ impl<const PORTS: usize, const MODES: usize> Step for Quad<PORTS, MODES> {
     fn refill(&mut self, lane: usize, machine: &Machine) {
         let old = &self.machines[lane].modes;
         let amplitudes: Vec<f64> = (0..old.count()).map(|k| self.state.modes[k].0[lane]).collect();
-        let mut waves: Vec<_> =
-            old.capacitors.iter().copied().zip(old.wave_by_mode.times_vector(&amplitudes)).collect();
+        let moved = old.wave_by_mode.times_vector(&amplitudes);
+        let volts = moved.iter().zip(&old.resting_wave).map(|(moved, rest)| moved + rest);
+        let mut waves: Vec<_> = old.capacitors.iter().copied().zip(volts).collect();
         waves.append(&mut self.held[lane]);
         let new = &machine.modes;
         let volts_of = |key: &str| waves.iter().find(|(k, _)| *k == key).map_or(0.0, |(_, volts)| *volts);
-        let taken: Vec<f64> = new.capacitors.iter().map(|key| volts_of(key)).collect();
+        let from_rest = |(key, rest): (&&str, &f64)| volts_of(key) - rest;
+        let taken: Vec<f64> = new.capacitors.iter().zip(&new.resting_wave).map(from_rest).collect();
         let amplitudes = new.mode_by_wave.times_vector(&taken);
         for k in 0..MODES {
             self.state.modes[k].0[lane] = amplitudes.get(k).copied().unwrap_or(0.0);
@@ -163,7 +165,7 @@ impl<const PORTS: usize, const MODES: usize> Step for Quad<PORTS, MODES> {
         for lane in 0..LANES {
             let rest = &self.machines[lane].rest;
             for k in 0..MODES {
-                self.state.modes[k].0[lane] = rest.state.get(k).copied().unwrap_or(0.0);
+                self.state.modes[k].0[lane] = 0.0;
             }
             for past in &mut self.state.volts {
                 for port in 0..PORTS {

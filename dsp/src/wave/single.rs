@@ -73,10 +73,9 @@ impl<'a, const PORTS: usize, const MODES: usize> Single<'a, PORTS, MODES> {
         }
     }
 
-    /// The state that rests at `modes` and `volts`.
-    pub fn state(modes: &[f64], volts: &[f64]) -> SingleState<PORTS, MODES> {
-        let volts = std::array::from_fn(|p| volts[p]);
-        SingleState { modes: std::array::from_fn(|k| modes.get(k).copied().unwrap_or(0.0)), volts: [volts; 3] }
+    /// The state of rest, with `volts` at the root.
+    pub fn at_rest(volts: &[f64; MAX_PORTS]) -> SingleState<PORTS, MODES> {
+        SingleState { modes: [0.0; MODES], volts: [std::array::from_fn(|p| volts[p]); 3] }
     }
 
     /// One step with `signal` volts at `in`; returns the volts at `o`.
