@@ -2,6 +2,8 @@
 
 use std::io::{BufWriter, Write};
 
+use platewright_dsp::signal::TriangularDither;
+
 use super::output_folder::StagedFile;
 use super::samples::SampleFormat;
 use super::scratch::frames_of;
@@ -10,7 +12,7 @@ use super::{AudioError, interrupt};
 /// What a written file turned out to hold.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
 pub struct Levels {
-    /// The largest absolute sample before rounding and clipping; 1.0 is full scale.
+    /// The largest absolute sample before dither, rounding and clipping; 1.0 is full scale.
     pub peak: f64,
     /// Samples beyond full scale: clipped in integer formats, kept in float.
     pub over_full_scale: u64,
@@ -29,6 +31,9 @@ pub struct WavOutput {
     position: u64,
     bytes: Vec<u8>,
     levels: Levels,
+    /// The dither of each channel, where it was asked for.
+    dither: Vec<TriangularDither>,
+    dithered: Vec<Vec<f64>>,
 }
 
 impl WavOutput {
@@ -46,8 +51,26 @@ impl WavOutput {
         let mut file = BufWriter::new(file);
         let header = header(format, channels, sample_rate, frames, RIFF_LIMIT);
         file.write_all(&header).map_err(AudioError::write(file.get_ref().target()))?;
-        let (bytes, levels) = (Vec::new(), Levels::default());
-        Ok(WavOutput { file, format, channels, frames, position: 0, bytes, levels })
+        Ok(WavOutput {
+            file,
+            format,
+            channels,
+            frames,
+            position: 0,
+            bytes: Vec::new(),
+            levels: Levels::default(),
+            dither: Vec::new(),
+            dithered: Vec::new(),
+        })
+    }
+
+    /// The same file with triangular dither before its rounding; float stays as it is.
+    pub fn with_dither(mut self) -> Self {
+        if self.format != SampleFormat::F32 {
+            self.dither = (0..self.channels).map(TriangularDither::for_channel).collect();
+            self.dithered = vec![Vec::new(); self.channels];
+        }
+        self
     }
 
     /// Appends a block, one plane a channel, all of one length.
@@ -61,18 +84,24 @@ impl WavOutput {
         interrupt::check()?;
         let frames = frames_of(planes, self.channels);
         assert!(self.position + frames as u64 <= self.frames, "more frames than promised");
-        self.bytes.clear();
-        for frame in 0..frames {
-            for (channel, plane) in planes.iter().enumerate() {
-                let sample = plane.as_ref()[frame];
-                if !sample.is_finite() {
-                    let (path, frame) = (self.file.get_ref().target().to_owned(), self.position + frame as u64 + 1);
-                    return Err(AudioError::NotFinite { path, frame, channel: channel + 1 });
-                }
-                self.levels.peak = self.levels.peak.max(sample.abs());
-                self.levels.over_full_scale += u64::from(sample.abs() > 1.0);
-                self.format.encode(sample, &mut self.bytes);
+        for (channel, plane) in planes.iter().enumerate() {
+            let plane = plane.as_ref();
+            if let Some(at) = plane.iter().position(|sample| !sample.is_finite()) {
+                let (path, frame) = (self.file.get_ref().target().to_owned(), self.position + at as u64 + 1);
+                return Err(AudioError::NotFinite { path, frame, channel: channel + 1 });
             }
+            self.levels.peak = plane.iter().fold(self.levels.peak, |peak, sample| peak.max(sample.abs()));
+            self.levels.over_full_scale += plane.iter().filter(|sample| sample.abs() > 1.0).count() as u64;
+        }
+        if self.dither.is_empty() {
+            self.format.encode(planes, &mut self.bytes);
+        } else {
+            for ((plane, dithered), dither) in planes.iter().zip(&mut self.dithered).zip(&mut self.dither) {
+                dithered.clear();
+                dithered.extend_from_slice(plane.as_ref());
+                dither.add(dithered, self.format.step());
+            }
+            self.format.encode(&self.dithered, &mut self.bytes);
         }
         self.position += frames as u64;
         self.file.write_all(&self.bytes).map_err(AudioError::write(self.file.get_ref().target()))
@@ -101,7 +130,13 @@ impl WavOutput {
 const RIFF_LIMIT: u64 = u32::MAX as u64;
 
 /// The bytes before the samples; a container longer than `riff_limit` becomes RF64.
-fn header(format: SampleFormat, channels: usize, sample_rate: u32, frames: u64, riff_limit: u64) -> Vec<u8> {
+pub(super) fn header(
+    format: SampleFormat,
+    channels: usize,
+    sample_rate: u32,
+    frames: u64,
+    riff_limit: u64,
+) -> Vec<u8> {
     let data_bytes = frames * (channels * format.bytes()) as u64;
     let mut chunks = chunk(b"fmt ", &format_chunk(format, channels, sample_rate));
     if format == SampleFormat::F32 {
