@@ -12,7 +12,6 @@ pub struct Scratch {
     file: File,
     channels: usize,
     frames: u64,
-    peak: f64,
     bytes: Vec<u8>,
 }
 
@@ -24,7 +23,7 @@ impl Scratch {
     /// The file cannot be made.
     pub fn new_in(folder: &Path, channels: usize) -> Result<Self, AudioError> {
         let file = tempfile::tempfile_in(folder).map_err(AudioError::write(folder))?;
-        Ok(Scratch { folder: folder.to_owned(), file, channels, frames: 0, peak: 0.0, bytes: Vec::new() })
+        Ok(Scratch { folder: folder.to_owned(), file, channels, frames: 0, bytes: Vec::new() })
     }
 
     /// Appends a block, one plane a channel, all of one length.
@@ -37,22 +36,10 @@ impl Scratch {
     pub fn write(&mut self, planes: &[impl AsRef<[f64]>]) -> Result<(), AudioError> {
         interrupt::check()?;
         let frames = frames_of(planes, self.channels);
-        let samples = planes.iter().flat_map(|plane| plane.as_ref());
-        self.peak = samples.fold(self.peak, |peak, sample| peak.max(sample.abs()));
         samples::encode(planes, &mut self.bytes, f64::to_le_bytes);
         self.file.write_all(&self.bytes).map_err(AudioError::write(&self.folder))?;
         self.frames += frames as u64;
         Ok(())
-    }
-
-    /// The largest absolute sample so far.
-    pub fn peak(&self) -> f64 {
-        self.peak
-    }
-
-    /// Frames so far.
-    pub fn frames(&self) -> u64 {
-        self.frames
     }
 
     /// Turns to reading, from the start.
@@ -113,7 +100,6 @@ mod tests {
         let mut scratch = Scratch::new_in(folder.path(), 2).unwrap();
         scratch.write(&[[0.1, -1.0 / 3.0], [f64::MIN_POSITIVE, -2.5]]).unwrap();
         scratch.write(&[[7e-9], [0.25]]).unwrap();
-        assert_eq!((scratch.peak(), scratch.frames()), (2.5, 3));
         #[cfg(unix)]
         assert_eq!(std::fs::read_dir(folder.path()).unwrap().count(), 0, "the scratch file has no name");
         let mut reader = scratch.into_reader().unwrap();

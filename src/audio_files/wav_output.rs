@@ -2,8 +2,6 @@
 
 use std::io::{BufWriter, Write};
 
-use platewright_dsp::signal::TriangularDither;
-
 use super::output_folder::StagedFile;
 use super::samples::SampleFormat;
 use super::scratch::frames_of;
@@ -12,7 +10,7 @@ use super::{AudioError, interrupt};
 /// What a written file turned out to hold.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
 pub struct Levels {
-    /// The largest absolute sample before dither, rounding and clipping; 1.0 is full scale.
+    /// The largest absolute sample before rounding and clipping; 1.0 is full scale.
     pub peak: f64,
     /// Samples beyond full scale: clipped in integer formats, kept in float.
     pub over_full_scale: u64,
@@ -31,9 +29,6 @@ pub struct WavOutput {
     position: u64,
     bytes: Vec<u8>,
     levels: Levels,
-    /// The dither of each channel, where it was asked for.
-    dither: Vec<TriangularDither>,
-    dithered: Vec<Vec<f64>>,
 }
 
 impl WavOutput {
@@ -51,26 +46,7 @@ impl WavOutput {
         let mut file = BufWriter::new(file);
         let header = header(format, channels, sample_rate, frames, RIFF_LIMIT);
         file.write_all(&header).map_err(AudioError::write(file.get_ref().target()))?;
-        Ok(WavOutput {
-            file,
-            format,
-            channels,
-            frames,
-            position: 0,
-            bytes: Vec::new(),
-            levels: Levels::default(),
-            dither: Vec::new(),
-            dithered: Vec::new(),
-        })
-    }
-
-    /// The same file with triangular dither before its rounding; float stays as it is.
-    pub fn with_dither(mut self) -> Self {
-        if self.format != SampleFormat::F32 {
-            self.dither = (0..self.channels).map(TriangularDither::for_channel).collect();
-            self.dithered = vec![Vec::new(); self.channels];
-        }
-        self
+        Ok(WavOutput { file, format, channels, frames, position: 0, bytes: Vec::new(), levels: Levels::default() })
     }
 
     /// Appends a block, one plane a channel, all of one length.
@@ -93,16 +69,7 @@ impl WavOutput {
             self.levels.peak = plane.iter().fold(self.levels.peak, |peak, sample| peak.max(sample.abs()));
             self.levels.over_full_scale += plane.iter().filter(|sample| sample.abs() > 1.0).count() as u64;
         }
-        if self.dither.is_empty() {
-            self.format.encode(planes, &mut self.bytes);
-        } else {
-            for ((plane, dithered), dither) in planes.iter().zip(&mut self.dithered).zip(&mut self.dither) {
-                dithered.clear();
-                dithered.extend_from_slice(plane.as_ref());
-                dither.add(dithered, self.format.step());
-            }
-            self.format.encode(&self.dithered, &mut self.bytes);
-        }
+        self.format.encode(planes, &mut self.bytes);
         self.position += frames as u64;
         self.file.write_all(&self.bytes).map_err(AudioError::write(self.file.get_ref().target()))
     }
