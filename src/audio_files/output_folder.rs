@@ -24,6 +24,7 @@ impl OutputPlan {
     /// The folder is a file, or holds something and `replace` is not set; an output is one of `inputs`, a folder, or
     /// named twice.
     pub fn check(folder: &Path, replace: bool, files: &[PathBuf], inputs: &[PathBuf]) -> Result<Self, AudioError> {
+        let folder = if folder.as_os_str().is_empty() { Path::new(".") } else { folder };
         if folder.exists() && !folder.is_dir() {
             return Err(AudioError::FolderIsFile { folder: folder.to_owned() });
         }

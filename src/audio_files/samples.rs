@@ -52,7 +52,12 @@ impl Coding {
     }
 }
 
-fn decode<const BYTES: usize>(bytes: &[u8], planes: &mut [Vec<f64>], value: impl Fn([u8; BYTES]) -> f64) {
+/// Takes interleaved bytes apart into planes.
+pub(super) fn decode<const BYTES: usize>(
+    bytes: &[u8],
+    planes: &mut [Vec<f64>],
+    value: impl Fn([u8; BYTES]) -> f64,
+) {
     let frame_bytes = planes.len() * BYTES;
     for (channel, plane) in planes.iter_mut().enumerate() {
         let sample = |frame: &[u8]| value(std::array::from_fn(|k| frame[channel * BYTES + k]));
@@ -81,13 +86,36 @@ impl SampleFormat {
         }
     }
 
-    /// Appends one sample, rounded to the nearest value; integers stop at their ends, float goes on.
-    pub(super) fn encode(self, sample: f64, bytes: &mut Vec<u8>) {
+    /// Replaces `bytes` with the frames of `planes`, planes of one length, one a channel: every sample rounded to the
+    /// nearest value; integers stop at their ends, float goes on.
+    pub(super) fn encode(self, planes: &[impl AsRef<[f64]>], bytes: &mut Vec<u8>) {
         match self {
-            SampleFormat::I16 => bytes.extend_from_slice(&integer(sample, 15).to_le_bytes()[..2]),
-            SampleFormat::I24 => bytes.extend_from_slice(&integer(sample, 23).to_le_bytes()[..3]),
-            SampleFormat::I32 => bytes.extend_from_slice(&integer(sample, 31).to_le_bytes()),
-            SampleFormat::F32 => bytes.extend_from_slice(&(sample as f32).to_le_bytes()),
+            SampleFormat::I16 => encode(planes, bytes, |sample| {
+                let [a, b, ..] = integer(sample, 15).to_le_bytes();
+                [a, b]
+            }),
+            SampleFormat::I24 => encode(planes, bytes, |sample| {
+                let [a, b, c, _] = integer(sample, 23).to_le_bytes();
+                [a, b, c]
+            }),
+            SampleFormat::I32 => encode(planes, bytes, |sample| integer(sample, 31).to_le_bytes()),
+            SampleFormat::F32 => encode(planes, bytes, |sample| (sample as f32).to_le_bytes()),
+        }
+    }
+}
+
+/// Interleaves planes of one length as bytes.
+pub(super) fn encode<const BYTES: usize>(
+    planes: &[impl AsRef<[f64]>],
+    bytes: &mut Vec<u8>,
+    coded: impl Fn(f64) -> [u8; BYTES],
+) {
+    let frame_bytes = planes.len() * BYTES;
+    let frames = planes.first().map_or(0, |plane| plane.as_ref().len());
+    bytes.resize(frames * frame_bytes, 0);
+    for (channel, plane) in planes.iter().enumerate() {
+        for (frame, &sample) in bytes.chunks_exact_mut(frame_bytes).zip(plane.as_ref()) {
+            frame[channel * BYTES..][..BYTES].copy_from_slice(&coded(sample));
         }
     }
 }
@@ -129,7 +157,7 @@ mod tests {
 
     fn written(format: SampleFormat, sample: f64) -> Vec<u8> {
         let mut bytes = Vec::new();
-        format.encode(sample, &mut bytes);
+        format.encode(&[[sample]], &mut bytes);
         bytes
     }
 

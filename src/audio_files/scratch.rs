@@ -1,18 +1,18 @@
 //! Sound that waits on disk between two passes, without rounding.
 
 use std::fs::File;
-use std::io::{BufReader, BufWriter, Read, Seek, Write};
+use std::io::{Read, Seek, Write};
 use std::path::{Path, PathBuf};
 
-use super::{AudioError, interrupt};
+use super::{AudioError, interrupt, samples};
 
 /// Frames of f64 in a file without a name: on Unix it is gone however the program ends.
 pub struct Scratch {
     folder: PathBuf,
-    file: BufWriter<File>,
+    file: File,
     channels: usize,
     frames: u64,
-    peak: f64,
+    bytes: Vec<u8>,
 }
 
 impl Scratch {
@@ -23,7 +23,7 @@ impl Scratch {
     /// The file cannot be made.
     pub fn new_in(folder: &Path, channels: usize) -> Result<Self, AudioError> {
         let file = tempfile::tempfile_in(folder).map_err(AudioError::write(folder))?;
-        Ok(Scratch { folder: folder.to_owned(), file: BufWriter::new(file), channels, frames: 0, peak: 0.0 })
+        Ok(Scratch { folder: folder.to_owned(), file, channels, frames: 0, bytes: Vec::new() })
     }
 
     /// Appends a block, one plane a channel, all of one length.
@@ -36,50 +36,30 @@ impl Scratch {
     pub fn write(&mut self, planes: &[impl AsRef<[f64]>]) -> Result<(), AudioError> {
         interrupt::check()?;
         let frames = frames_of(planes, self.channels);
-        for frame in 0..frames {
-            for plane in planes {
-                let sample = plane.as_ref()[frame];
-                self.peak = self.peak.max(sample.abs());
-                self.file.write_all(&sample.to_le_bytes()).map_err(AudioError::write(&self.folder))?;
-            }
-        }
+        samples::encode(planes, &mut self.bytes, f64::to_le_bytes);
+        self.file.write_all(&self.bytes).map_err(AudioError::write(&self.folder))?;
         self.frames += frames as u64;
         Ok(())
-    }
-
-    /// The largest absolute sample so far.
-    pub fn peak(&self) -> f64 {
-        self.peak
-    }
-
-    /// Frames so far.
-    pub fn frames(&self) -> u64 {
-        self.frames
     }
 
     /// Turns to reading, from the start.
     ///
     /// # Errors
-    /// The disk is full or fails.
-    pub fn into_reader(self) -> Result<ScratchReader, AudioError> {
-        let mut file =
-            self.file.into_inner().map_err(|error| AudioError::write(&self.folder)(error.into_error()))?;
-        file.rewind().map_err(AudioError::read(&self.folder))?;
-        Ok(ScratchReader {
-            folder: self.folder,
-            file: BufReader::new(file),
-            channels: self.channels,
-            left: self.frames,
-        })
+    /// The disk fails.
+    pub fn into_reader(mut self) -> Result<ScratchReader, AudioError> {
+        self.file.rewind().map_err(AudioError::read(&self.folder))?;
+        let Scratch { folder, file, channels, frames, bytes, .. } = self;
+        Ok(ScratchReader { folder, file, channels, left: frames, bytes })
     }
 }
 
 /// The frames of a scratch file, read once.
 pub struct ScratchReader {
     folder: PathBuf,
-    file: BufReader<File>,
+    file: File,
     channels: usize,
     left: u64,
+    bytes: Vec<u8>,
 }
 
 impl ScratchReader {
@@ -94,14 +74,9 @@ impl ScratchReader {
         interrupt::check()?;
         assert_eq!(planes.len(), self.channels, "one plane a channel");
         let frames = (max_frames as u64).min(self.left) as usize;
-        planes.iter_mut().for_each(Vec::clear);
-        let mut sample = [0; 8];
-        for _ in 0..frames {
-            for plane in planes.iter_mut() {
-                self.file.read_exact(&mut sample).map_err(AudioError::read(&self.folder))?;
-                plane.push(f64::from_le_bytes(sample));
-            }
-        }
+        self.bytes.resize(frames * self.channels * 8, 0);
+        self.file.read_exact(&mut self.bytes).map_err(AudioError::read(&self.folder))?;
+        samples::decode(&self.bytes, planes, f64::from_le_bytes);
         self.left -= frames as u64;
         Ok(frames)
     }
@@ -125,7 +100,6 @@ mod tests {
         let mut scratch = Scratch::new_in(folder.path(), 2).unwrap();
         scratch.write(&[[0.1, -1.0 / 3.0], [f64::MIN_POSITIVE, -2.5]]).unwrap();
         scratch.write(&[[7e-9], [0.25]]).unwrap();
-        assert_eq!((scratch.peak(), scratch.frames()), (2.5, 3));
         #[cfg(unix)]
         assert_eq!(std::fs::read_dir(folder.path()).unwrap().count(), 0, "the scratch file has no name");
         let mut reader = scratch.into_reader().unwrap();

@@ -1,10 +1,13 @@
 //! Files made and read by sox and ffmpeg, and files that are odd or wrong.
 
+#![allow(clippy::disallowed_methods, reason = "a test may differ in the last bit from machine to machine")]
+
 use std::fs;
 use std::path::{Path, PathBuf};
 use std::process::{Command, Stdio};
 
 use super::error::RecordingProblem as Problem;
+use super::wav_output::Levels;
 use super::*;
 
 /// Runs a tool that the tests need and returns its standard output.
@@ -450,5 +453,76 @@ fn damaged_headers_never_panic() {
                 }
             }
         }
+    }
+}
+/// Beyond 4 GiB the header is RF64's; a limit of nothing asks for it in a small file.
+#[test]
+fn sox_ffmpeg_and_the_reader_agree_on_written_rf64() {
+    let folder = folder();
+    for (format, _, ffmpeg_raw) in RAW {
+        for channels in [1, 2, 6] {
+            let planes = sound(channels, 1001);
+            let samples_bytes = expected_bytes(format, &planes);
+            let mut bytes = wav_output::header(format, channels, 96000, 1001, 0);
+            assert_eq!(&bytes[..4], b"RF64");
+            bytes.extend(&samples_bytes);
+            bytes.resize(bytes.len().next_multiple_of(2), 0);
+            let riff_bytes = u64::from_le_bytes(bytes[20..28].try_into().unwrap());
+            assert_eq!(riff_bytes, bytes.len() as u64 - 8, "the length of all that follows it");
+            let (path, file) = path_in(&folder, "long.wav");
+            fs::write(&path, bytes).unwrap();
+            let what = format!("{format}, {channels} channels");
+            assert!(
+                ffmpeg(&format!("-i {file} -f {ffmpeg_raw} -c:a pcm_{ffmpeg_raw} -")) == samples_bytes,
+                "{what}"
+            );
+            assert_eq!(String::from_utf8(sox_info(&file, "-s")).unwrap().trim(), "1001", "{what}");
+            let recording = Recording::open(&path).unwrap();
+            let shape = (recording.frames(), recording.channels(), recording.sample_rate(), recording.warning());
+            assert_eq!(shape, (1001, channels, 96000, None));
+        }
+    }
+}
+
+#[test]
+fn header_changes_to_rf64_where_32_bits_end() {
+    let kind = |frames| wav_output::header(SampleFormat::I16, 1, 48000, frames, u64::from(u32::MAX))[..4].to_vec();
+    // The header counts 36 bytes of its own; the length must stay even.
+    let most = (u64::from(u32::MAX) - 36) / 2;
+    assert_eq!((kind(most), kind(most + 1)), (b"RIFF".to_vec(), b"RF64".to_vec()));
+}
+
+/// ffmpeg's `ebur128` filter measures the same files.
+#[test]
+fn loudness_and_true_peak_agree_with_ffmpeg() {
+    let folder = folder();
+    for (channels, rate, effects) in [
+        (1, 48000, "synth 8 pinknoise fade t 3 8 2 gain -6"),
+        (2, 44100, "synth 8 pluck C3 pluck E3 repeat 1 gain -3"),
+        (2, 96000, "synth 6 brownnoise tremolo 0.5 80 gain -9"),
+    ] {
+        let (path, file) = path_in(&folder, "made.wav");
+        sox(&format!("-R -r {rate} -c {channels} -n -b 24 {file} {effects}"));
+        let recording = Recording::open(&path).unwrap();
+        let mut meter = platewright_dsp::signal::LevelMeter::new(channels, rate).unwrap();
+        let mut planes = vec![Vec::new(); channels];
+        let mut blocks = recording.blocks().unwrap();
+        while blocks.read(&mut planes, 1000).unwrap() > 0 {
+            meter.add(&planes);
+        }
+        let ours = meter.finish();
+        let measure = "ebur128=metadata=1:peak=true,ametadata=mode=print:file=-";
+        let report = String::from_utf8(ffmpeg(&format!("-i {file} -af {measure} -f null /dev/null"))).unwrap();
+        let last = |key: &str| -> f64 {
+            let line = report.lines().rfind(|line| line.starts_with(key)).unwrap_or_else(|| panic!("no {key}"));
+            line[key.len()..].parse().unwrap()
+        };
+        let loudness = last("lavfi.r128.I=");
+        assert!((ours.loudness.unwrap() - loudness).abs() < 0.02, "{:?}, ffmpeg {loudness} LUFS", ours.loudness);
+        assert_eq!(ours.peak, recording.peak().unwrap());
+        let true_peak = (0..channels).map(|c| last(&format!("lavfi.r128.true_peaks_ch{c}="))).fold(0.0, f64::max);
+        // Both interpolate with short filters of their own; EBU Tech 3341 allows a meter +0.2 and −0.4 dB.
+        let apart_db = 20.0 * (ours.true_peak / true_peak).log10();
+        assert!(apart_db.abs() < 0.2, "true peak {}, ffmpeg {true_peak}", ours.true_peak);
     }
 }

@@ -46,8 +46,7 @@ impl WavOutput {
         let mut file = BufWriter::new(file);
         let header = header(format, channels, sample_rate, frames, RIFF_LIMIT);
         file.write_all(&header).map_err(AudioError::write(file.get_ref().target()))?;
-        let (bytes, levels) = (Vec::new(), Levels::default());
-        Ok(WavOutput { file, format, channels, frames, position: 0, bytes, levels })
+        Ok(WavOutput { file, format, channels, frames, position: 0, bytes: Vec::new(), levels: Levels::default() })
     }
 
     /// Appends a block, one plane a channel, all of one length.
@@ -61,19 +60,16 @@ impl WavOutput {
         interrupt::check()?;
         let frames = frames_of(planes, self.channels);
         assert!(self.position + frames as u64 <= self.frames, "more frames than promised");
-        self.bytes.clear();
-        for frame in 0..frames {
-            for (channel, plane) in planes.iter().enumerate() {
-                let sample = plane.as_ref()[frame];
-                if !sample.is_finite() {
-                    let (path, frame) = (self.file.get_ref().target().to_owned(), self.position + frame as u64 + 1);
-                    return Err(AudioError::NotFinite { path, frame, channel: channel + 1 });
-                }
-                self.levels.peak = self.levels.peak.max(sample.abs());
-                self.levels.over_full_scale += u64::from(sample.abs() > 1.0);
-                self.format.encode(sample, &mut self.bytes);
+        for (channel, plane) in planes.iter().enumerate() {
+            let plane = plane.as_ref();
+            if let Some(at) = plane.iter().position(|sample| !sample.is_finite()) {
+                let (path, frame) = (self.file.get_ref().target().to_owned(), self.position + at as u64 + 1);
+                return Err(AudioError::NotFinite { path, frame, channel: channel + 1 });
             }
+            self.levels.peak = plane.iter().fold(self.levels.peak, |peak, sample| peak.max(sample.abs()));
+            self.levels.over_full_scale += plane.iter().filter(|sample| sample.abs() > 1.0).count() as u64;
         }
+        self.format.encode(planes, &mut self.bytes);
         self.position += frames as u64;
         self.file.write_all(&self.bytes).map_err(AudioError::write(self.file.get_ref().target()))
     }
@@ -101,7 +97,13 @@ impl WavOutput {
 const RIFF_LIMIT: u64 = u32::MAX as u64;
 
 /// The bytes before the samples; a container longer than `riff_limit` becomes RF64.
-fn header(format: SampleFormat, channels: usize, sample_rate: u32, frames: u64, riff_limit: u64) -> Vec<u8> {
+pub(super) fn header(
+    format: SampleFormat,
+    channels: usize,
+    sample_rate: u32,
+    frames: u64,
+    riff_limit: u64,
+) -> Vec<u8> {
     let data_bytes = frames * (channels * format.bytes()) as u64;
     let mut chunks = chunk(b"fmt ", &format_chunk(format, channels, sample_rate));
     if format == SampleFormat::F32 {
