@@ -74,7 +74,7 @@ pub struct BiasArguments {
 #[derive(Debug, Args)]
 pub struct MeasureArguments {
     /// The stage file
-    #[arg(value_name = "STAGE", required = true)]
+    #[arg(value_name = "STAGE")]
     pub stage: Option<PathBuf>,
     /// Tones to measure harmonics at, frequency:volts (V rms at the input); repeat it, or separate them by commas
     #[arg(long = "tone", value_name = "F:V", num_args = 1..)]

@@ -177,7 +177,12 @@ impl BiasPlan {
 
 impl MeasurePlan {
     fn new(mut arguments: MeasureArguments) -> Result<Self, RequestError> {
-        let stage = arguments.stage.take().unwrap_or_default();
+        let stage = arguments.stage.take().or_else(|| swallowed(&mut arguments)).ok_or_else(|| {
+            RequestError::new(
+                "no stage file is named",
+                "write it first: platewright measure stage.toml --tone 1000:0.5",
+            )
+        })?;
         let tones = items(&arguments.tones).map(tone).collect::<Result<_, _>>()?;
         let frequencies = items(&arguments.frequencies)
             .map(|item| HERTZ.value("--frequencies", item, item))
@@ -295,6 +300,15 @@ fn items(values: &[String]) -> impl Iterator<Item = &str> {
     values.iter().flat_map(|value| value.split(',')).map(str::trim)
 }
 
+/// A stage file written behind `--tone` or `--frequencies`, which take several values: the last one that is none.
+fn swallowed(arguments: &mut MeasureArguments) -> Option<PathBuf> {
+    let is_file = |last: &String, is_item: fn(&str) -> bool| !last.split(',').any(is_item);
+    let tones = arguments.tones.pop_if(|last| is_file(last, |item| tone(item).is_ok()));
+    let file =
+        tones.or_else(|| arguments.frequencies.pop_if(|last| is_file(last, |item| iec60062::parse(item).is_ok())));
+    file.map(PathBuf::from)
+}
+
 fn tone(item: &str) -> Result<Tone, RequestError> {
     let Some((frequency, level)) = item.split_once(':') else {
         let remedy = "write frequency:volts, such as 1000:0.5 or 1k:500m";
@@ -354,7 +368,10 @@ mod tests {
             "measure s.toml --tone 1000:0.5,60:0.1,1k:500m",
             "measure s.toml --tone 1000:0.5 60:0.1 1k:500m",
             "measure --tone=1000:0.5 --tone=60:0.1,1k:500m -- s.toml",
+            "measure --tone 1000:0.5 60:0.1 1k:500m s.toml",
+            "measure --tone 1000:0.5,60:0.1,1k:500m --frequencies 20,20k s.toml",
         ] {
+            assert_eq!(measure(arguments).stage, PathBuf::from("s.toml"), "{arguments}");
             let found: Vec<_> = measure(arguments).tones.iter().map(|tone| (tone.frequency, tone.level)).collect();
             assert_eq!(found, expected, "{arguments}");
         }
@@ -371,6 +388,7 @@ mod tests {
             ("measure s.toml --tone 1000:1e400", ["\"1000:1e400\"", "larger than any number"]),
             ("measure s.toml --frequencies 20,,20k", ["an empty item", "it is empty"]),
             ("measure s.toml --frequencies 20,-5", ["\"-5\"", "out of range"]),
+            ("measure --tone 1000:0.5", ["no stage file", "write it first"]),
             ("measure s.toml --level 0", ["--level", "out of range"]),
             ("bias s.toml --meter ten", ["--meter: \"ten\"", "10M"]),
             ("render s.toml --play a --into b --oversample 3", ["--oversample: \"3\"", "power of two"]),

@@ -1,34 +1,14 @@
 //! The stage file as a whole.
 
-use std::sync::Arc;
-
 use platewright_dsp::circuit::{Coupling, LeakReturn};
-use platewright_dsp::triode::{Capacitances, GridLaw, Koren, Law, Limits, Section, TubeType};
+use platewright_dsp::triode::{Capacitances, GridLaw, Law, library};
 
 use super::*;
 use crate::commands::{DEMO_STAGE, EXAMPLE_STAGE};
 
-const NAMES: [&str; 3] = ["12AU7", "12BH7A", "12AX7"];
-
-/// Stands for the tube library: the parser asks it for names alone.
-fn stand_in(name: &str) -> Option<Arc<TubeType>> {
-    let law = Law::Koren(Koren { mu: 20.0, ex: 1.3, kg1: 1100.0, kp: 80.0, kvb: 300.0 });
-    NAMES.contains(&name).then(|| {
-        Arc::new(TubeType {
-            name: name.to_owned(),
-            section: Section { law, grid: GridLaw::BORROWED, capacitance: Capacitances::default() },
-            ensemble: Vec::new(),
-            limits: Limits::default(),
-            heater: None,
-            basing: None,
-            from_library: true,
-        })
-    })
-}
-
 fn parse(text: &str) -> Result<StageFile, Failure> {
-    let names = NAMES.map(str::to_owned);
-    StageFile::parse("stage.toml", text.to_owned(), &Library { find: &stand_in, names: &names })
+    let names: Vec<String> = library::names().map(str::to_owned).collect();
+    StageFile::parse("stage.toml", text.to_owned(), &Library { find: &library::find, names: &names })
 }
 
 fn good(text: &str) -> StageFile {
@@ -417,6 +397,7 @@ fn tube_rules() {
     let cases = [
         (own(("\"mine\"", "\"12AU7\"")), "\"12AU7\" is a type of the library"),
         (own(("\"mine\"", "\"12au7\"")), "\"12au7\" is a type of the library"),
+        (own(("\"mine\"", "\"ECC82\"")), "\"ECC82\" is a type of the library"),
         (own(("type = \"mine\"", "")), "`tube.type` is missing"),
         (own(("model", "modell")), "did you mean `model`?"),
         (own(("\"dempwolf-zoelzer\"", "\"dempwolf\"")), "\"two-section\" or \"dempwolf-zoelzer\" or \"koren\""),
@@ -434,7 +415,8 @@ fn tube_rules() {
         (own(("C = 3 }", "C = 3 }\nensemble = 5")), "`tube.ensemble` is a number where a list belongs"),
         (own(("[[tube]]", "[tube]")), "[[tube]]"),
         (own(("[[tube]]", &format!("{OWN}[[tube]]"))), "\"mine\" is there twice"),
-        (SMALL.replacen("12AX7", "12ax7", 1), "did you mean \"12AX7\"?"),
+        (SMALL.replacen("12AX7", "12BH7", 1), "did you mean \"12BH7A\"?"),
+        (SMALL.replacen("12AX7", "lamp", 1), "known types: 12AX7, 12AT7, 12AU7"),
         (SMALL.replacen("\"12AX7\"", "12", 1), "`gain.tube` is a number where a text belongs"),
     ];
     for (text, expected) in cases {
