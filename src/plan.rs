@@ -8,7 +8,7 @@ use crate::cli::{
 };
 use crate::failure::RequestError;
 use crate::iec60062;
-use crate::terminal::plain;
+use crate::option_values::{DRIVE, HERTZ, LEVEL, OHMS, TAIL, items, oversample, rate, tone};
 
 /// A command with everything it needs.
 #[derive(Debug)]
@@ -256,50 +256,6 @@ impl Sound {
     }
 }
 
-/// What a number on the command line measures, and its range.
-struct Range {
-    what: &'static str,
-    low: f64,
-    high: f64,
-    example: &'static str,
-}
-
-const HERTZ: Range =
-    Range { what: "a frequency from 0.001 Hz to 10 MHz", low: 1e-3, high: 1e7, example: "1000 or 1k" };
-const LEVEL: Range = Range { what: "a level from 1 nV to 10 kV rms", low: 1e-9, high: 1e4, example: "0.5 or 500m" };
-const OHMS: Range = Range { what: "a resistance from 1 Ω to 1 TΩ", low: 1.0, high: 1e12, example: "10M" };
-const TAIL: Range = Range { what: "a time from 0 to 600 s", low: 0.0, high: 600.0, example: "2" };
-const DRIVE: Range = Range { what: "a gain from -120 to 120 dB", low: -120.0, high: 120.0, example: "-6" };
-
-impl Range {
-    fn option(&self, option: &str, text: Option<&str>) -> Result<Option<f64>, RequestError> {
-        text.map(|text| self.value(option, text, text)).transpose()
-    }
-
-    /// The value of `text`, which is `item` of `option` or a part of it.
-    fn value(&self, option: &str, item: &str, text: &str) -> Result<f64, RequestError> {
-        let wrong = |why: String| {
-            wrong_item(option, item, &why, &format!("expected {}, such as {}", self.what, self.example))
-        };
-        let value =
-            iec60062::parse(text).map_err(|reason| wrong(format!("\"{}\" is no value: {reason}", plain(text))))?;
-        if (self.low..=self.high).contains(&value) {
-            return Ok(value);
-        }
-        Err(wrong(format!("{} is out of range", plain(text))))
-    }
-}
-
-fn wrong_item(option: &str, item: &str, why: &str, remedy: &str) -> RequestError {
-    let item = if item.is_empty() { "an empty item".to_owned() } else { format!("\"{}\"", plain(item)) };
-    RequestError::new(format!("{option}: {item}: {why}"), remedy)
-}
-
-/// Items of a repeated option whose values may hold several, separated by commas.
-fn items(values: &[String]) -> impl Iterator<Item = &str> {
-    values.iter().flat_map(|value| value.split(',')).map(str::trim)
-}
-
 /// A stage file written behind `--tone` or `--frequencies`, which take several values: the last one that is none.
 fn swallowed(arguments: &mut MeasureArguments) -> Option<PathBuf> {
     let is_file = |last: &String, is_item: fn(&str) -> bool| !last.split(',').any(is_item);
@@ -307,32 +263,6 @@ fn swallowed(arguments: &mut MeasureArguments) -> Option<PathBuf> {
     let file =
         tones.or_else(|| arguments.frequencies.pop_if(|last| is_file(last, |item| iec60062::parse(item).is_ok())));
     file.map(PathBuf::from)
-}
-
-fn tone(item: &str) -> Result<Tone, RequestError> {
-    let Some((frequency, level)) = item.split_once(':') else {
-        let remedy = "write frequency:volts, such as 1000:0.5 or 1k:500m";
-        return Err(wrong_item("--tone", item, "there is no colon between frequency and level", remedy));
-    };
-    let frequency = HERTZ.value("--tone", item, frequency)?;
-    let level = LEVEL.value("--tone", item, level)?;
-    Ok(Tone { frequency, level })
-}
-
-fn oversample(text: &str) -> Result<usize, RequestError> {
-    match text.parse::<usize>() {
-        Ok(times) if times.is_power_of_two() && times <= 64 => Ok(times),
-        _ => Err(wrong_item("--oversample", text, "not a power of two to 64", "write 1, 2, 4, 8, 16, 32 or 64")),
-    }
-}
-
-fn rate(text: &str) -> Result<u32, RequestError> {
-    let remedy = "write a whole number of hertz from 8000 to 192000, such as 48000 or 48k";
-    match iec60062::parse(text) {
-        Ok(hertz) if hertz.fract() == 0.0 && (8000.0..=192_000.0).contains(&hertz) => Ok(hertz as u32),
-        Ok(_) => Err(wrong_item("--rate", text, "not a sample rate", remedy)),
-        Err(reason) => Err(wrong_item("--rate", text, &format!("it is no value: {reason}"), remedy)),
-    }
 }
 
 #[cfg(test)]

@@ -5,7 +5,9 @@
 //! a value of theirs that is wrong is shown where it was written; and each configuration is then checked as a whole
 //! ([`build`]).
 
+mod assignment;
 mod build;
+mod compare;
 mod keys;
 mod names;
 mod overrides;
@@ -13,6 +15,7 @@ mod problem;
 mod quantity;
 mod read;
 mod schema;
+mod sets;
 mod tree;
 mod tubes;
 mod value;
