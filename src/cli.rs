@@ -29,6 +29,7 @@ Example:  platewright bias stage.toml
           platewright bias stage.toml --meter 10M --sheet")]
     Bias(BiasArguments),
     /// Measure gain, harmonics and response of every configuration
+    #[command(override_usage = "platewright measure <STAGE> [OPTIONS]")]
     #[command(after_help = "\
 Example:  platewright measure stage.toml --tone 1000:0.5 --frequencies 20,1k,20k
           platewright measure stage.toml --headroom --noise --imd smpte,difference --play take.wav
@@ -75,7 +76,8 @@ pub struct BiasArguments {
 #[derive(Debug, Args)]
 pub struct MeasureArguments {
     /// The stage file
-    #[arg(value_name = "STAGE", required = true)]
+    // Optional for the parser alone: --tone and --frequencies may have swallowed it, which the plan sorts out.
+    #[arg(value_name = "STAGE")]
     pub stage: Option<PathBuf>,
     /// Tones to measure harmonics at, frequency:volts (V rms at the input); repeat it, or separate them by commas
     #[arg(long = "tone", value_name = "F:V", num_args = 1..)]

@@ -74,13 +74,6 @@ pub enum WorkError {
         /// The system's reason.
         source: io::Error,
     },
-    /// Something could not be read although it had been opened.
-    Read {
-        /// The file or stream.
-        what: String,
-        /// The system's reason.
-        source: io::Error,
-    },
     /// Anything else: what failed, and what to do.
     Failed {
         /// What failed.
@@ -139,7 +132,6 @@ impl fmt::Display for WorkError {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
             Self::Write { what, source } => write!(f, "{} could not be written: {source}", plain(what)),
-            Self::Read { what, source } => write!(f, "{} could not be read: {source}", plain(what)),
             Self::Failed { problem, remedy } => write!(f, "{problem}: {remedy}"),
         }
     }

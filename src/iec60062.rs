@@ -157,7 +157,7 @@ pub fn format(value: f64, letters: Letters) -> String {
     place_letter(&digits, exponent - step, letter)
 }
 
-/// [`format`], or `None` where four digits do not say the value exactly.
+/// [`format()`], or `None` where four digits do not say the value exactly.
 pub fn format_exact(value: f64, letters: Letters) -> Option<String> {
     let text = format(value, letters);
     (parse(&text) == Ok(value)).then_some(text)

@@ -6,6 +6,7 @@ mod commands;
 mod failure;
 mod figures;
 mod iec60062;
+mod option_values;
 mod plan;
 mod rendering;
 mod show;

@@ -10,7 +10,7 @@ use crate::cli::{
 };
 use crate::failure::RequestError;
 use crate::iec60062;
-use crate::terminal::plain;
+use crate::option_values::{DRIVE, HERTZ, LEVEL, OHMS, TAIL, items, oversample, rate, tone, tone_pair};
 
 /// A command with everything it needs.
 #[derive(Debug)]
@@ -213,7 +213,12 @@ impl BiasPlan {
 
 impl MeasurePlan {
     fn new(mut arguments: MeasureArguments) -> Result<Self, RequestError> {
-        let stage = arguments.stage.take().unwrap_or_default();
+        let stage = arguments.stage.take().or_else(|| swallowed(&mut arguments)).ok_or_else(|| {
+            RequestError::new(
+                "no stage file is named",
+                "write it first: platewright measure stage.toml --tone 1000:0.5",
+            )
+        })?;
         let tones = items(&arguments.tones).map(tone).collect::<Result<_, _>>()?;
         let frequencies = items(&arguments.frequencies)
             .map(|item| HERTZ.value("--frequencies", item, item))
@@ -315,80 +320,13 @@ impl Sound {
     }
 }
 
-/// What a number on the command line measures, and its range.
-struct Range {
-    what: &'static str,
-    low: f64,
-    high: f64,
-    example: &'static str,
-}
-
-const HERTZ: Range =
-    Range { what: "a frequency from 0.001 Hz to 10 MHz", low: 1e-3, high: 1e7, example: "1000 or 1k" };
-const LEVEL: Range = Range { what: "a level from 1 nV to 10 kV rms", low: 1e-9, high: 1e4, example: "0.5 or 500m" };
-const OHMS: Range = Range { what: "a resistance from 1 Ω to 1 TΩ", low: 1.0, high: 1e12, example: "10M" };
-const TAIL: Range = Range { what: "a time from 0 to 600 s", low: 0.0, high: 600.0, example: "2" };
-const DRIVE: Range = Range { what: "a gain from -120 to 120 dB", low: -120.0, high: 120.0, example: "-6" };
-
-impl Range {
-    fn option(&self, option: &str, text: Option<&str>) -> Result<Option<f64>, RequestError> {
-        text.map(|text| self.value(option, text, text)).transpose()
-    }
-
-    /// The value of `text`, which is `item` of `option` or a part of it.
-    fn value(&self, option: &str, item: &str, text: &str) -> Result<f64, RequestError> {
-        let wrong = |why: String| {
-            wrong_item(option, item, &why, &format!("expected {}, such as {}", self.what, self.example))
-        };
-        let value =
-            iec60062::parse(text).map_err(|reason| wrong(format!("\"{}\" is no value: {reason}", plain(text))))?;
-        if (self.low..=self.high).contains(&value) {
-            return Ok(value);
-        }
-        Err(wrong(format!("{} is out of range", plain(text))))
-    }
-}
-
-fn wrong_item(option: &str, item: &str, why: &str, remedy: &str) -> RequestError {
-    let item = if item.is_empty() { "an empty item".to_owned() } else { format!("\"{}\"", plain(item)) };
-    RequestError::new(format!("{option}: {item}: {why}"), remedy)
-}
-
-/// Items of a repeated option whose values may hold several, separated by commas.
-fn items(values: &[String]) -> impl Iterator<Item = &str> {
-    values.iter().flat_map(|value| value.split(',')).map(str::trim)
-}
-
-fn tone(item: &str) -> Result<Tone, RequestError> {
-    let Some((frequency, level)) = item.split_once(':') else {
-        let remedy = "write frequency:volts, such as 1000:0.5 or 1k:500m";
-        return Err(wrong_item("--tone", item, "there is no colon between frequency and level", remedy));
-    };
-    let frequency = HERTZ.value("--tone", item, frequency)?;
-    let level = LEVEL.value("--tone", item, level)?;
-    Ok(Tone { frequency, level })
-}
-
-fn tone_pair(item: &str) -> Result<TonePair, RequestError> {
-    let pairs = [TonePair::Smpte, TonePair::Din, TonePair::Difference];
-    let found = pairs.into_iter().find(|pair| pair.key() == item);
-    found.ok_or_else(|| wrong_item("--imd", item, "no such pair of tones", "write smpte, din or difference"))
-}
-
-fn oversample(text: &str) -> Result<usize, RequestError> {
-    match text.parse::<usize>() {
-        Ok(times) if times.is_power_of_two() && times <= 64 => Ok(times),
-        _ => Err(wrong_item("--oversample", text, "not a power of two to 64", "write 1, 2, 4, 8, 16, 32 or 64")),
-    }
-}
-
-fn rate(text: &str) -> Result<u32, RequestError> {
-    let remedy = "write a whole number of hertz from 8000 to 192000, such as 48000 or 48k";
-    match iec60062::parse(text) {
-        Ok(hertz) if hertz.fract() == 0.0 && (8000.0..=192_000.0).contains(&hertz) => Ok(hertz as u32),
-        Ok(_) => Err(wrong_item("--rate", text, "not a sample rate", remedy)),
-        Err(reason) => Err(wrong_item("--rate", text, &format!("it is no value: {reason}"), remedy)),
-    }
+/// A stage file written behind `--tone` or `--frequencies`, which take several values: the last one that is none.
+fn swallowed(arguments: &mut MeasureArguments) -> Option<PathBuf> {
+    let is_file = |last: &String, is_item: fn(&str) -> bool| !last.split(',').any(is_item);
+    let tones = arguments.tones.pop_if(|last| is_file(last, |item| tone(item).is_ok()));
+    let file =
+        tones.or_else(|| arguments.frequencies.pop_if(|last| is_file(last, |item| iec60062::parse(item).is_ok())));
+    file.map(PathBuf::from)
 }
 
 #[cfg(test)]
@@ -424,7 +362,10 @@ mod tests {
             "measure s.toml --tone 1000:0.5,60:0.1,1k:500m",
             "measure s.toml --tone 1000:0.5 60:0.1 1k:500m",
             "measure --tone=1000:0.5 --tone=60:0.1,1k:500m -- s.toml",
+            "measure --tone 1000:0.5 60:0.1 1k:500m s.toml",
+            "measure --tone 1000:0.5,60:0.1,1k:500m --frequencies 20,20k s.toml",
         ] {
+            assert_eq!(measure(arguments).stage, PathBuf::from("s.toml"), "{arguments}");
             let found: Vec<_> = measure(arguments).tones.iter().map(|tone| (tone.frequency, tone.level)).collect();
             assert_eq!(found, expected, "{arguments}");
         }
@@ -441,6 +382,7 @@ mod tests {
             ("measure s.toml --tone 1000:1e400", ["\"1000:1e400\"", "larger than any number"]),
             ("measure s.toml --frequencies 20,,20k", ["an empty item", "it is empty"]),
             ("measure s.toml --frequencies 20,-5", ["\"-5\"", "out of range"]),
+            ("measure --tone 1000:0.5", ["no stage file", "write it first"]),
             ("measure s.toml --level 0", ["--level", "out of range"]),
             ("bias s.toml --meter ten", ["--meter: \"ten\"", "10M"]),
             ("render s.toml --play a --into b --oversample 3", ["--oversample: \"3\"", "power of two"]),

@@ -62,6 +62,18 @@ fn new_writes_a_commented_stage_file() {
 }
 
 #[test]
+fn the_example_is_a_stage_that_biases() {
+    let folder = Folder::new();
+    assert_eq!(folder.run(&["new", "stage.toml"]).code, Some(0));
+    let run = folder.run(&["bias", "stage.toml", "--json"]);
+    assert_eq!(run.code, Some(0), "{}", run.stderr);
+    let figures: serde_json::Value = serde_json::from_str(&run.stdout).expect("JSON and nothing else");
+    let names: Vec<_> =
+        figures["configurations"].as_array().into_iter().flatten().map(|one| one["name"].clone()).collect();
+    assert_eq!(names, ["12AU7, bypass in", "12AU7, bypass out", "12BH7A, bypass in", "12BH7A, bypass out"]);
+}
+
+#[test]
 fn new_never_overwrites() {
     let folder = Folder::new();
     folder.write("stage.toml", b"mine");
@@ -80,14 +92,19 @@ fn new_never_overwrites() {
 
 #[test]
 fn a_closed_pipe_is_no_defect() {
-    // Closed before the program starts, so that its first byte meets nobody.
-    let (reader, writer) = std::io::pipe().expect("a pipe");
-    drop(reader);
-    let output = Command::new(env!("CARGO_BIN_EXE_platewright"))
-        .args(["measure", "--help"])
-        .stdout(writer)
-        .output()
-        .expect("the program starts");
-    assert_eq!(output.status.code(), Some(0));
-    assert_eq!(String::from_utf8_lossy(&output.stderr), "");
+    let folder = Folder::new();
+    assert_eq!(folder.run(&["new", "stage.toml"]).code, Some(0));
+    for arguments in [&["measure", "--help"][..], &["bias", "stage.toml"], &["bias", "stage.toml", "--json"]] {
+        // Closed before the program starts, so that its first byte meets nobody.
+        let (reader, writer) = std::io::pipe().expect("a pipe");
+        drop(reader);
+        let output = Command::new(env!("CARGO_BIN_EXE_platewright"))
+            .args(arguments)
+            .current_dir(folder.path(""))
+            .stdout(writer)
+            .output()
+            .expect("the program starts");
+        assert_eq!(String::from_utf8_lossy(&output.stderr), "", "{arguments:?}");
+        assert_eq!(output.status.code(), Some(0), "{arguments:?}");
+    }
 }

@@ -5,7 +5,9 @@
 //! a value of theirs that is wrong is shown where it was written; and each configuration is then checked as a whole
 //! ([`build`]).
 
+mod assignment;
 mod build;
+mod compare;
 mod keys;
 mod names;
 mod overrides;
@@ -13,6 +15,7 @@ mod problem;
 mod quantity;
 mod read;
 mod schema;
+mod sets;
 mod tree;
 mod tubes;
 mod value;
@@ -39,6 +42,7 @@ pub struct StageFile {
     /// Title, as written: show it through [`crate::terminal::plain`].
     pub title: Option<String>,
     /// The whole text.
+    #[allow(dead_code, reason = "the report prints the file that its figures come from")]
     pub text: String,
     /// Every configuration, in the order of the file; at least one.
     pub configurations: Vec<Configuration>,
@@ -54,6 +58,7 @@ pub struct Configuration {
     /// The name made safe: the stem of its files, unlike every other's even where case does not count.
     pub file_stem: String,
     /// The keys that it changes and their values for a person, in order.
+    #[allow(dead_code, reason = "the report lists what each configuration changes")]
     pub settings: Vec<(String, String)>,
     /// The stage with these values.
     pub stage: Stage,

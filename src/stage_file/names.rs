@@ -11,7 +11,7 @@ pub const AS_DRAWN: &str = "as drawn";
 /// Longest file stem, bytes: file systems allow 255, and an ending and a number must fit.
 const LONGEST_STEM: usize = 120;
 
-/// A value for a person: "47k", "12AU7", "in".
+/// A value for a person: "47k", "12AU7", "in". A text stays as it is written; 47000 becomes "47k".
 pub fn shown_value(path: &str, node: &Node) -> String {
     match &node.value {
         Value::Switch(on) if path == "gain.bypass.engaged" => (if *on { "in" } else { "out" }).to_owned(),

@@ -82,12 +82,6 @@ impl Diagnosis {
         Self { name: plain(name).into_owned(), text: text.to_owned(), problems: unique }
     }
 
-    /// The problems.
-    #[cfg(test)]
-    pub fn problems(&self) -> &[Problem] {
-        &self.problems
-    }
-
     /// The whole message.
     pub fn render(&self, colour: bool) -> String {
         let renderer = if colour { Renderer::styled() } else { Renderer::plain() };

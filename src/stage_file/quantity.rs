@@ -76,24 +76,23 @@ impl Quantity {
         format!("{article} {}, {zero}{} to {}{unit}", self.name, bound(self.low), bound(self.high))
     }
 
-    /// The value for a person, without its unit: IEC 60062 for ohms and farads where that says it exactly.
+    /// The value for a person, without its unit: as designers write ohms and farads ("820", "4k7", "390n") where that
+    /// says it exactly, as a plain number otherwise.
     pub fn show(&self, value: f64) -> String {
         let letters = match self.unit {
             "Ω" => Some(Letters::Resistance),
             "F" => Some(Letters::Capacitance),
             _ => None,
         };
-        letters.and_then(|letters| iec60062::format_exact(value, letters)).unwrap_or_else(|| format!("{value}"))
+        // A letter that only stands for the decimal point says less than the point.
+        let exact = letters.and_then(|letters| iec60062::format_exact(value, letters));
+        exact.filter(|text| !text.contains(['R', 'F'])).unwrap_or_else(|| format!("{value}"))
     }
 
     /// Any value for a person, with its unit: "-47k Ω", "330 F", "0.5".
     pub fn show_with_unit(&self, value: f64) -> String {
         let sign = if value < 0.0 { "-" } else { "" };
-        let mut text = self.show(value.abs());
-        if text.contains(['R', 'F']) {
-            text = format!("{}", value.abs());
-        }
-        format!("{sign}{text} {}", self.unit).trim_end().to_owned()
+        format!("{sign}{} {}", self.show(value.abs()), self.unit).trim_end().to_owned()
     }
 }
 
@@ -124,6 +123,8 @@ mod tests {
         assert_eq!(RESISTOR.show(47e3), "47k");
         assert_eq!(CAPACITOR.show(390e-9), "390n");
         assert_eq!(RESISTOR.show(12345.0), "12345");
+        assert_eq!(RESISTOR.show(820.0), "820");
+        assert_eq!(RESISTOR.show(0.12), "0.12");
         assert_eq!(VOLTAGE.show(290.0), "290");
         assert_eq!(RESISTOR.show_with_unit(-47e3), "-47k Ω");
         assert_eq!(CAPACITOR.show_with_unit(330.0), "330 F");

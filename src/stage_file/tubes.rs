@@ -50,7 +50,8 @@ impl<'a> Tubes<'a> {
         let mut reader = TubeReader { table, item, problems };
         let Some(name) = reader.name() else { return };
         let span = table.get("type").map_or(item.span.clone(), |node| node.span.clone());
-        if let Some(known) = self.library.names.iter().find(|known| known.eq_ignore_ascii_case(&name)) {
+        // Under any of its names, and in upper or lower case: two types that only case tells apart would be a trap.
+        if let Some(known) = (self.library.find)(&name).map(|tube| tube.name.clone()) {
             let title = format!("`tube.type`: \"{name}\" is a type of the library");
             let remedy = format!("give your own tube another name, such as \"my {name}\"");
             reader.problems.push(Problem::new(&span, title, format!("the library has {known}"), remedy));
