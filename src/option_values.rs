@@ -15,12 +15,17 @@ pub struct Range {
     example: &'static str,
 }
 
+/// Range of a frequency.
 pub const HERTZ: Range =
     Range { what: "a frequency from 0.001 Hz to 10 MHz", low: 1e-3, high: 1e7, example: "1000 or 1k" };
+/// Range of a level or full scale.
 pub const LEVEL: Range =
     Range { what: "a level from 1 nV to 10 kV rms", low: 1e-9, high: 1e4, example: "0.5 or 500m" };
+/// Range of a meter.
 pub const OHMS: Range = Range { what: "a resistance from 1 Ω to 1 TΩ", low: 1.0, high: 1e12, example: "10M" };
+/// Range of `--tail`.
 pub const TAIL: Range = Range { what: "a time from 0 to 600 s", low: 0.0, high: 600.0, example: "2" };
+/// Range of `--drive`.
 pub const DRIVE: Range = Range { what: "a gain from -120 to 120 dB", low: -120.0, high: 120.0, example: "-6" };
 
 impl Range {
@@ -73,10 +78,10 @@ pub fn tone(item: &str) -> Result<Tone, RequestError> {
     Ok(Tone { frequency, level })
 }
 
-/// One pair of tones of `--imd`.
+/// One `--imd`.
 ///
 /// # Errors
-/// [`RequestError`] where there is no such pair.
+/// [`RequestError`] where it is no pair of tones.
 pub fn tone_pair(item: &str) -> Result<TonePair, RequestError> {
     let pairs = [TonePair::Smpte, TonePair::Din, TonePair::Difference];
     let found = pairs.into_iter().find(|pair| pair.key() == item);
