@@ -42,7 +42,7 @@ fn harmonic(tone: &Tone, order: usize) -> HarmonicFigures {
     let (dbc, phase_deg) = (tone.dbc(order), tone.relative_phase(order));
     let mut why = Why::new();
     if dbc.is_none() {
-        let reason = "it did not settle as the steps were made finer";
+        let reason = "below -220 dBc, or it did not settle as the steps were made finer: not trusted";
         why.extend(["dBc", "phase_deg"].map(|key| (key.to_owned(), reason.to_owned())));
     }
     HarmonicFigures { order: order as u32, dbc, phase_deg, why }
