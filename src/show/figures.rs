@@ -211,7 +211,7 @@ pub fn responses(configurations: &[ConfigurationFigures]) -> Option<SideBySide> 
 }
 
 fn size([re, im]: [f64; 2]) -> f64 {
-    re.hypot(im)
+    libm::hypot(re, im)
 }
 
 /// The few figures that a choice begins with, at the first tone that was measured.

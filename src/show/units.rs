@@ -7,7 +7,9 @@ use crate::plan::LevelUnit;
 /// Volts: millivolts below a tenth, microvolts below a tenth of those.
 pub fn volts(value: f64) -> String {
     match value.abs() {
-        size if size >= 0.0995 || size == 0.0 => short(value, "V"),
+        // Less than half a microvolt is what rounding leaves of 0 V.
+        size if size < 0.5e-6 => "0 V".to_owned(),
+        size if size >= 0.0995 => short(value, "V"),
         size if size >= 0.0995e-3 => format!("{:.2} mV", 1e3 * value),
         _ => format!("{:.2} µV", 1e6 * value),
     }
@@ -27,7 +29,8 @@ pub fn level(volts_rms: f64, unit: LevelUnit) -> String {
 /// Amperes as mA, small ones as µA or nA.
 pub fn amperes(value: f64) -> String {
     match value.abs() {
-        size if size == 0.0 || size >= 0.9995e-4 => format!("{:.3} mA", 1e3 * value),
+        size if size < 0.5e-12 => "0 A".to_owned(),
+        size if size >= 0.9995e-4 => format!("{:.3} mA", 1e3 * value),
         size if size >= 0.9995e-7 => format!("{:.2} µA", 1e6 * value),
         _ => format!("{:.2} nA", 1e9 * value),
     }
@@ -45,9 +48,9 @@ pub fn watts(value: f64) -> String {
 /// Ohms with k or M.
 pub fn ohms(value: f64) -> String {
     match value.abs() {
-        size if size >= 0.9995e6 => format!("{:.3} MΩ", 1e-6 * value),
-        size if size >= 999.5 => format!("{:.2} kΩ", 1e-3 * value),
-        _ => format!("{value:.1} Ω"),
+        size if size >= 0.99995e6 => format!("{} MΩ", digits(1e-6 * value, 4)),
+        size if size >= 999.95 => format!("{} kΩ", digits(1e-3 * value, 4)),
+        _ => format!("{} Ω", digits(value, 4)),
     }
 }
 
@@ -66,9 +69,13 @@ pub fn percent(value: f64) -> String {
     format!("{} %", digits(value, 3))
 }
 
-/// Hertz, with k from 1000 on.
+/// Hertz, with k or M.
 pub fn hertz(value: f64) -> String {
-    if value >= 1000.0 { format!("{} kHz", digits(value / 1000.0, 4)) } else { format!("{} Hz", digits(value, 4)) }
+    match value {
+        size if size >= 0.99995e6 => format!("{} MHz", digits(1e-6 * value, 4)),
+        size if size >= 999.95 => format!("{} kHz", digits(1e-3 * value, 4)),
+        _ => format!("{} Hz", digits(value, 4)),
+    }
 }
 
 fn short(value: f64, unit: &str) -> String {
@@ -84,7 +91,7 @@ fn digits(value: f64, count: usize) -> String {
     if value == 0.0 || !value.is_finite() {
         return format!("{value}");
     }
-    let before = value.abs().log10().floor() as i32 + 1;
+    let before = libm::log10(value.abs()).floor() as i32 + 1;
     let decimals = (count as i32 - before).clamp(0, 12) as usize;
     let text = format!("{value:.decimals$}");
     if text.contains('.') { text.trim_end_matches('0').trim_end_matches('.').to_owned() } else { text }
@@ -103,7 +110,8 @@ mod tests {
         assert_eq!(level(0.7746, LevelUnit::Dbu), "0.00 dBu");
         assert_eq!(amperes(4.321e-3), "4.321 mA");
         assert_eq!(amperes(3.2e-8), "32.00 nA");
-        assert_eq!(ohms(33_000.0), "33.00 kΩ");
+        assert_eq!(ohms(33_000.0), "33 kΩ");
+        assert_eq!(ohms(10e6), "10 MΩ");
         assert_eq!(percent(0.012345), "0.0123 %");
         assert_eq!(hertz(1000.0), "1 kHz");
         assert_eq!(hertz(12.5), "12.5 Hz");
