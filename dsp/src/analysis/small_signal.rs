@@ -3,7 +3,7 @@
 use num_complex::Complex64;
 
 use super::OperatingPoint;
-use crate::circuit::nodal::stamp;
+use crate::circuit::nodal::{stamp, stamp_slopes};
 use crate::circuit::{LOAD_KEYS, Network, Node, Part, Terminal};
 use crate::linear::Matrix;
 
@@ -97,22 +97,8 @@ impl<'a> SmallSignal<'a> {
             }
         }
         for (place, tube) in self.network.triodes.iter().zip(&self.point.tubes) {
-            let c = tube.currents;
-            controlled(&mut matrix, (place.grid, place.cathode), (place.grid, place.cathode), c.grid_by_vgk);
-            controlled(&mut matrix, (place.plate, place.cathode), (place.grid, place.cathode), c.plate_by_vgk);
-            controlled(&mut matrix, (place.plate, place.cathode), (place.plate, place.cathode), c.plate_by_vpk);
+            stamp_slopes(&mut matrix, place, &tube.currents);
         }
         matrix
-    }
-}
-
-/// A current into `out.0` and out of `out.1`, `siemens` times the voltage from `by.0` to `by.1`.
-fn controlled(matrix: &mut Matrix<Complex64>, out: (Terminal, Terminal), by: (Terminal, Terminal), siemens: f64) {
-    for (row, row_sign) in [(out.0, 1.0), (out.1, -1.0)] {
-        for (column, column_sign) in [(by.0, 1.0), (by.1, -1.0)] {
-            if let (Some(row), Some(column)) = (row, column) {
-                matrix[(row, column)] += Complex64::new(row_sign * column_sign * siemens, 0.0);
-            }
-        }
     }
 }

@@ -1,7 +1,8 @@
 //! Nodal analysis of a network: the matrices that every solver begins with.
 
-use super::{Network, Terminal};
+use super::{Network, Terminal, TriodePlace};
 use crate::linear::{Matrix, Scalar};
+use crate::triode::Currents;
 
 /// A matrix that picks port voltages out of node voltages, one row a port (from, to).
 pub(crate) fn incidence(nodes: usize, ports: &[(Terminal, Terminal)]) -> Matrix<f64> {
@@ -55,4 +56,28 @@ pub(crate) fn source_currents(network: &Network) -> Matrix<f64> {
         }
     }
     matrix
+}
+
+/// Adds a triode's slopes to a nodal matrix.
+pub(crate) fn stamp_slopes<T: Scalar + From<f64>>(matrix: &mut Matrix<T>, place: &TriodePlace, slopes: &Currents) {
+    let (grid, plate) = ((place.grid, place.cathode), (place.plate, place.cathode));
+    controlled(matrix, grid, grid, slopes.grid_by_vgk);
+    controlled(matrix, plate, grid, slopes.plate_by_vgk);
+    controlled(matrix, plate, plate, slopes.plate_by_vpk);
+}
+
+/// A current into `out.0` and out of `out.1`, `siemens` times the voltage from `by.0` to `by.1`.
+fn controlled<T: Scalar + From<f64>>(
+    matrix: &mut Matrix<T>,
+    out: (Terminal, Terminal),
+    by: (Terminal, Terminal),
+    siemens: f64,
+) {
+    for (row, row_sign) in [(out.0, 1.0), (out.1, -1.0)] {
+        for (column, column_sign) in [(by.0, 1.0), (by.1, -1.0)] {
+            if let (Some(row), Some(column)) = (row, column) {
+                matrix[(row, column)] += T::from(row_sign * column_sign * siemens);
+            }
+        }
+    }
 }

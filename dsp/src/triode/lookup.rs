@@ -29,12 +29,12 @@ pub(crate) trait Lookup: Lanes {
     fn at_least(self, bound: f64, yes: Self, no: Self) -> Self;
 }
 
-/// Value and slope a cell at `place`, in a table whose last cell is `last`; the first and last cells have no end.
+/// Value and slope a cell at `place`, in tables whose last cells are `last`; the first and last cells have no end.
 #[inline(always)]
-pub(crate) fn cubic<V: Lookup>(tables: V::Tables<'_>, which: Which, place: V, last: usize) -> (V, V) {
+pub(crate) fn cubic<V: Lookup>(tables: V::Tables<'_>, which: Which, place: V, last: V) -> (V, V) {
     let round = V::splat(ROUND);
     // NaN becomes 0.
-    let rounded = place.max(V::splat(0.0)).min(V::splat(last as f64)) + round;
+    let rounded = place.max(V::splat(0.0)).min(last) + round;
     let t = place - (rounded - round);
     let [c0, c1, c2, c3] = V::fetch(tables, which, rounded);
     let top = t * c3;
@@ -52,7 +52,7 @@ fn number(rounded: f64) -> usize {
 fn cell(tables: &Tables, which: Which, number: usize) -> &F64x4 {
     let cells = tables.cells(which);
     debug_assert!(number < cells.len());
-    // SAFETY: `cubic` clamps to the last cell, NaN included.
+    // SAFETY: `cubic` clamps to the last cell, NaN included; numbers and tables of a tube are made together.
     unsafe { cells.get_unchecked(number) }
 }
 

@@ -14,12 +14,11 @@ use crate::lanes::{F64x4, LANES};
 
 /// z below which ln(1+e^z)^γ is 0 to a double beside its value in use: e^−36 is 2·10⁻¹⁶.
 const Z_LOW: f64 = -36.0;
-/// The end of the table: for C of 5 V⁻¹ it stands at 80 V, which is 400 V over a µ of 5.
-const Z_HIGH: f64 = 412.0;
 /// Fine enough for currents within 10⁻⁶ of the law wherever they are above a nanoampere.
 const CELLS_PER_UNIT: f64 = 32.0;
-/// The last cell of ln(1+e^z)^γ: one of zeros, the spline's, and one that goes straight on.
-const LAST: usize = ((Z_HIGH - Z_LOW) * CELLS_PER_UNIT) as usize + 1;
+/// Voltages that the tables cover before they go straight on: far beyond what a line stage's supply and driver reach.
+const COVERED_VPK: f64 = 1000.0;
+const COVERED_VGK: f64 = 40.0;
 /// Place of z = 0: the cell of zeros ends, half a cell past its middle, at `Z_LOW`.
 const PLACE_OF_ZERO: f64 = -Z_LOW * CELLS_PER_UNIT + 0.5;
 
@@ -28,14 +27,16 @@ const ROOT_HIGH: f64 = 64.0;
 const ROOT_CELLS_PER_UNIT: f64 = 32.0;
 const ROOT_LAST: usize = (ROOT_HIGH * ROOT_CELLS_PER_UNIT) as usize;
 
-/// ln(1+e^z)^power for z from −∞ to ∞.
-fn soft_powers(power: f64) -> Cells {
+/// ln(1+e^z)^power for z from −∞ to ∞, by spline to some `z_high`.
+fn soft_powers(power: f64, z_high: f64) -> Cells {
     // Past 40 the softplus is z to the last bit.
     let soft = |z: f64| if z > 40.0 { z } else { softplus(z).0 };
+    let z_high = z_high.clamp(64.0, 4096.0).ceil();
+    let count = ((z_high - Z_LOW) * CELLS_PER_UNIT) as usize + 1;
     let value = |k: usize| libm::pow(soft(Z_LOW + k as f64 / CELLS_PER_UNIT), power);
-    let mut values: Vec<f64> = (0..LAST).map(value).collect();
+    let mut values: Vec<f64> = (0..count).map(value).collect();
     values[0] = 0.0;
-    let (end, slope) = (values[LAST - 1], power * libm::pow(Z_HIGH, power - 1.0) / CELLS_PER_UNIT);
+    let (end, slope) = (values[count - 1], power * libm::pow(z_high, power - 1.0) / CELLS_PER_UNIT);
     Cells::spline(&values, (0.0, slope)).from_nothing().straight_on(end, slope)
 }
 
@@ -82,6 +83,9 @@ pub(crate) struct TubeNumbers<V> {
     grid_weight: V,
     grid_slope_weight: V,
     grid_constant: V,
+    /// The last cell of each table.
+    plate_last: V,
+    grid_last: V,
 }
 
 impl<V> TubeNumbers<V> {
@@ -105,6 +109,8 @@ impl<V> TubeNumbers<V> {
             grid_weight: f(&self.grid_weight),
             grid_slope_weight: f(&self.grid_slope_weight),
             grid_constant: f(&self.grid_constant),
+            plate_last: f(&self.plate_last),
+            grid_last: f(&self.grid_last),
         }
     }
 }
@@ -129,6 +135,8 @@ pub(crate) fn gather(lanes: [&TubeNumbers<f64>; LANES]) -> TubeNumbers<F64x4> {
         grid_weight: pick(|n| n.grid_weight),
         grid_slope_weight: pick(|n| n.grid_slope_weight),
         grid_constant: pick(|n| n.grid_constant),
+        plate_last: pick(|n| n.plate_last),
+        grid_last: pick(|n| n.grid_last),
     }
 }
 
@@ -162,7 +170,7 @@ impl Tables {
 
 impl TabulatedSection {
     pub fn new(section: &Section) -> TabulatedSection {
-        let (kind, power, mut numbers) = match section.law {
+        let (kind, power, z_high, mut numbers) = match section.law {
             Law::TwoSection(l) => {
                 let scale = l.g * libm::pow(l.c, -l.gamma);
                 // Never 0, so that a plate at 0 V divides 0 by something.
@@ -177,12 +185,14 @@ impl TabulatedSection {
                     thrice_knee_cubed: 3.0 * knee_cubed,
                     ..in_cells(l.c)
                 };
-                (LawKind::TwoSection, l.gamma, numbers)
+                let least_mu = l.mu * l.mu_ratio.min(1.0);
+                let z_high = l.c * (COVERED_VPK / least_mu + COVERED_VGK + l.offset);
+                (LawKind::TwoSection, l.gamma, z_high, numbers)
             }
             Law::DempwolfZoelzer(l) => {
                 let weight = l.g * libm::pow(l.c, -l.gamma);
                 let numbers = TubeNumbers { inverse_mu: 1.0 / l.mu, weight, ..in_cells(l.c) };
-                (LawKind::DempwolfZoelzer, l.gamma, numbers)
+                (LawKind::DempwolfZoelzer, l.gamma, l.c * (COVERED_VPK / l.mu + COVERED_VGK), numbers)
             }
             Law::Koren(l) => {
                 let numbers = TubeNumbers {
@@ -191,7 +201,9 @@ impl TabulatedSection {
                     knee_cubed: l.kvb,
                     ..in_cells(l.kp)
                 };
-                (LawKind::Koren, l.ex, numbers)
+                // Largest where the plate is at the cathode; a quarter of the grid's range is far past its use there.
+                let z_high = l.kp * (1.0 / l.mu + 0.25 * COVERED_VGK / l.kvb.sqrt());
+                (LawKind::Koren, l.ex, z_high, numbers)
             }
         };
         numbers.constant = numbers.constant * CELLS_PER_UNIT + PLACE_OF_ZERO;
@@ -205,7 +217,9 @@ impl TabulatedSection {
         numbers.grid_slope_weight = numbers.grid_by_vgk * numbers.grid_weight;
         numbers.grid_constant = ig0;
         let root = if kind == LawKind::Koren { root_powers(power) } else { Cells(Vec::new()) };
-        let tables = Tables { plate: soft_powers(power), grid: soft_powers(xi), root };
+        let tables = Tables { plate: soft_powers(power, z_high), grid: soft_powers(xi, cg * COVERED_VGK), root };
+        numbers.plate_last = (tables.plate.0.len() - 1) as f64;
+        numbers.grid_last = (tables.grid.0.len() - 1) as f64;
         TabulatedSection { kind, numbers, tables: Arc::new(tables) }
     }
 
@@ -247,7 +261,7 @@ pub(crate) fn currents<V: Lookup>(
     vpk: V,
 ) -> LaneCurrents<V> {
     let place = n.grid_by_vgk * vgk + V::splat(PLACE_OF_ZERO);
-    let (grid, grid_slope) = cubic(tables, Which::Grid, place, LAST);
+    let (grid, grid_slope) = cubic(tables, Which::Grid, place, n.grid_last);
     let grid = n.grid_weight * grid + n.grid_constant;
     let grid_by_vgk = n.grid_slope_weight * grid_slope;
     let (plate, plate_by_vgk, plate_by_vpk) = match kind {
@@ -255,7 +269,7 @@ pub(crate) fn currents<V: Lookup>(
         LawKind::Koren => koren(n, tables, vgk, vpk),
         LawKind::DempwolfZoelzer => {
             let place = n.by_vpk * vpk + (n.by_vgk * vgk + n.constant);
-            let (value, slope) = cubic(tables, Which::Plate, place, LAST);
+            let (value, slope) = cubic(tables, Which::Plate, place, n.plate_last);
             let slope = n.slope_weight * slope;
             (n.weight * value - grid, slope - grid_by_vgk, slope * n.inverse_mu)
         }
@@ -266,8 +280,8 @@ pub(crate) fn currents<V: Lookup>(
 #[inline(always)]
 fn two_section<V: Lookup>(n: &TubeNumbers<V>, tables: V::Tables<'_>, vgk: V, vpk: V) -> (V, V, V) {
     let by_grid = n.by_vgk * vgk + n.constant;
-    let (first, first_slope) = cubic(tables, Which::Plate, n.by_vpk * vpk + by_grid, LAST);
-    let (second, second_slope) = cubic(tables, Which::Plate, n.second_by_vpk * vpk + by_grid, LAST);
+    let (first, first_slope) = cubic(tables, Which::Plate, n.by_vpk * vpk + by_grid, n.plate_last);
+    let (second, second_slope) = cubic(tables, Which::Plate, n.second_by_vpk * vpk + by_grid, n.plate_last);
     let (first_slope, second_slope) = (n.slope_weight * first_slope, n.second_slope_weight * second_slope);
     let current = n.weight * first + n.second_weight * second;
     let by_vgk = first_slope + second_slope;
@@ -288,10 +302,10 @@ fn koren<V: Lookup>(n: &TubeNumbers<V>, tables: V::Tables<'_>, vgk: V, vpk: V) -
     let v = vpk.max(zero);
     let inverse_root = V::splat(1.0) / (n.knee_cubed + v * v).sqrt();
     let by_vgk = n.by_vgk * inverse_root;
-    let (soft, soft_slope) = cubic(tables, Which::Plate, n.constant + by_vgk * vgk, LAST);
+    let (soft, soft_slope) = cubic(tables, Which::Plate, n.constant + by_vgk * vgk, n.plate_last);
     let root = v.sqrt();
     let place = root * V::splat(ROOT_CELLS_PER_UNIT) - V::splat(0.5);
-    let (power, power_slope) = cubic(tables, Which::Root, place, ROOT_LAST);
+    let (power, power_slope) = cubic(tables, Which::Root, place, V::splat(ROOT_LAST as f64));
     // d(root)/d(vpk) = 1/(2·root); where the plate is not positive the law and its slopes are 0.
     let halved = V::splat(0.5 * ROOT_CELLS_PER_UNIT) / root.max(V::splat(1e-6));
     let power_by_vpk = power_slope * halved * v.at_least(f64::MIN_POSITIVE, V::splat(1.0), zero);
@@ -385,5 +399,26 @@ mod tests {
             let (near, far) = (t.currents(70.0, 0.5), t.currents(71.0, 0.5));
             assert!((far.grid - near.grid - near.grid_by_vgk).abs() < 1e-2 * near.grid);
         }
+    }
+
+    #[test]
+    fn a_tube_of_the_librarys_own_law_never_gives_power() {
+        let library =
+            crate::triode::library::names().map(|name| crate::triode::library::find(name).unwrap().section);
+        let own = library.chain([sections()[0]]).filter(|s| matches!(s.law, Law::TwoSection(_)));
+        let mut seen = 0;
+        for section in own {
+            let table = TabulatedSection::new(&section);
+            for g in 0..=900 {
+                for p in 0..=160 {
+                    let (vgk, vpk) = (-70.0 + 0.1117 * g as f64, -52.0 + 7.31 * p as f64);
+                    for current in [table.currents(vgk, vpk).plate, section.currents(vgk, vpk).plate] {
+                        assert!(current * vpk >= 0.0, "{current:e} A at {vgk} V, {vpk} V: {:?}", section.law);
+                    }
+                    seen += 1;
+                }
+            }
+        }
+        assert!(seen > 100_000);
     }
 }
