@@ -121,6 +121,19 @@ impl Law {
     }
 }
 
+impl Law {
+    /// The law of a tube with `emission` times the plate current and `mu_factor` times the µ.
+    pub fn scaled(&self, emission: f64, mu_factor: f64) -> Law {
+        match *self {
+            Law::TwoSection(l) => Law::TwoSection(TwoSection { g: l.g * emission, mu: l.mu * mu_factor, ..l }),
+            Law::DempwolfZoelzer(l) => {
+                Law::DempwolfZoelzer(DempwolfZoelzer { g: l.g * emission, mu: l.mu * mu_factor, ..l })
+            }
+            Law::Koren(l) => Law::Koren(Koren { kg1: l.kg1 / emission, mu: l.mu * mu_factor, ..l }),
+        }
+    }
+}
+
 impl TwoSection {
     fn plate(&self, vgk: f64, vpk: f64) -> (f64, f64, f64) {
         let second_mu = self.mu * self.mu_ratio;

@@ -1,5 +1,6 @@
 //! Triodes: their laws, the tables that make the laws fast, and the tube library.
 
+pub mod fitting;
 mod law;
 pub mod library;
 mod lookup;
