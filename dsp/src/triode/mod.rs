@@ -8,7 +8,7 @@ mod spline;
 mod table;
 mod tube;
 
-pub use law::{Currents, DempwolfZoelzer, GridLaw, Koren, Law, TwoSection};
+pub use law::{Currents, DempwolfZoelzer, GridLaw, Koren, Law, ThreeSection, TwoSection};
 pub(crate) use lookup::Lookup;
 pub(crate) use table::{LaneCurrents, LawKind, Tables, TabulatedSection, TubeNumbers, currents, gather};
 pub use tube::{Capacitances, Heater, Limits, Section, TubeType};

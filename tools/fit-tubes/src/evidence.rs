@@ -24,6 +24,9 @@ pub struct GatheredRow {
     pub note: Option<String>,
 }
 
+/// The note of a row that its source doubts.
+pub const DOUBTFUL_ROW: &str = "doubtful in the source";
+
 /// Relative standard errors. Typical operation is a maker's bogey, printed to two figures; an amplifier chart adds the
 /// rounding of its whole numbers; a row off its own trend counts with three times the error.
 const CURRENT_ERROR: f64 = 0.012;
@@ -38,9 +41,9 @@ const DOUBTFUL: f64 = 3.0;
 
 /// Measured curves: part of the reading, and part of the full scale; the points of a curve err together, so many points
 /// count as `CURVE_COUNT` of them.
-const CURVE_ERROR: f64 = 0.02;
-const CURVE_FLOOR: f64 = 0.008;
-const CURVE_COUNT: f64 = 25.0;
+const CURVE_ERROR: f64 = 0.015;
+const CURVE_FLOOR: f64 = 0.004;
+const CURVE_COUNT: f64 = 40.0;
 
 const TYPICAL_SOURCE: &str = "makers' data sheets and RCA Receiving Tube Manual RC-30, typical operation";
 const CHART_SOURCE: &str = "RCA Receiving Tube Manual, resistance-coupled amplifier charts";
@@ -232,7 +235,7 @@ fn mu_line(tables: &Tables, name: &str) -> Option<Gathered> {
         let (vpk, current) = (row.plate_volts, row.cathode_mA * 1e-3);
         let condition = Condition::Current { vpk, current };
         let figure = Figure { condition, quantity: Quantity::Mu, published: row.mu, error: MU_LINE_ERROR * row.mu };
-        let note = doubtful.then(|| "doubtful in the source".to_owned());
+        let note = doubtful.then(|| DOUBTFUL_ROW.to_owned());
         rows.push(GatheredRow { at: vec![vpk, current], figure, fitted, note });
     }
     (!rows.is_empty()).then(|| Gathered {
@@ -249,7 +252,10 @@ fn mu_line(tables: &Tables, name: &str) -> Option<Gathered> {
 fn curves(tables: &Tables, entry: &TypeEntry, name: &str) -> Option<Gathered> {
     let (_, about, rows) = tables.curves.iter().find(|(stem, ..)| stem == name)?;
     let full_scale = rows.iter().map(|row| row.plate_mA).fold(0.0, f64::max) * 1e-3;
-    let used: Vec<&CurveRow> = rows.iter().filter(|row| entry.curve_reading_error.is_some() || row.plate_mA * 1e-3 > 0.01 * full_scale).collect();
+    let used: Vec<&CurveRow> = rows
+        .iter()
+        .filter(|row| entry.curve_reading_error.is_some() || row.plate_mA * 1e-3 > 0.01 * full_scale)
+        .collect();
     let inflation = (used.len() as f64 / CURVE_COUNT).sqrt().max(1.0);
     let row = |row: &&CurveRow| {
         let (vpk, vgk, published) = (row.plate_volts, row.grid_volts, row.plate_mA * 1e-3);
@@ -260,7 +266,11 @@ fn curves(tables: &Tables, entry: &TypeEntry, name: &str) -> Option<Gathered> {
         GatheredRow { at: vec![vpk, vgk], figure, fitted: true, note: None }
     };
     Some(Gathered {
-        what: if entry.curve_reading_error.is_some() { "plate curves read off a chart" } else { "measured plate curves above 1 % of full scale" },
+        what: if entry.curve_reading_error.is_some() {
+            "plate curves read off a chart"
+        } else {
+            "measured plate curves above 1 % of full scale"
+        },
         quantity: "plate current, A",
         sure: Sure::Seen,
         source: about.clone(),

@@ -17,28 +17,13 @@ pub struct Fitted {
 }
 
 /// Fits a type to what was gathered, with the priors of its neighbours where it has any.
-pub fn fit(name: &str, gathered: &[Gathered], neighbours: &[Law]) -> Fitted {
+pub fn fit(name: &str, family: Family, gathered: &[Gathered], neighbours: &[Law]) -> Fitted {
     let task = Task {
-        family: Family::TwoSection,
-        priors: priors(neighbours),
+        family,
+        priors: priors(family, neighbours),
         grid: GridLaw::BORROWED,
         sets: gathered.iter().map(Gathered::set).collect(),
     };
-    if std::env::var("DEBUGFIT").is_ok() {
-        use platewright_dsp::triode::TwoSection;
-        let l = |g, mu, gamma, c, share, mu_ratio, offset, knee| Law::TwoSection(TwoSection { g, mu, gamma, c, share, mu_ratio, offset, knee });
-        let start = match name {
-            "12AX7" => l(1.18e-3, 111.8, 1.478, 5.44, 0.0256, 0.369, 0.590, 6.5),
-            "12AU7" => l(2.01e-3, 25.5, 1.20, 1.342, 0.338, 0.531, -0.893, 6.5),
-            "6SN7GTB" => l(1.70e-3, 21.5, 1.354, 0.472, 0.0043, 0.2, -1.0, 6.5),
-            "12AT7" => l(4.0e-3, 76.6, 1.20, 4.23, 0.222, 0.479, 0.10, 6.5),
-            _ => l(1.07e-2, 39.8, 1.20, 2.83, 0.404, 0.683, -0.187, 6.5),
-        };
-        task.debug(&start);
-        let found = task.solve();
-        eprintln!("solved: cost {}", found.cost);
-        task.debug(&found.law);
-    }
     let wide = task.without_priors();
     let seed = seed_of(name);
     let members = |task: &Task, from: u64| -> Vec<Law> {
@@ -48,12 +33,20 @@ pub fn fit(name: &str, gathered: &[Gathered], neighbours: &[Law]) -> Fitted {
 }
 
 /// Parameters that neighbours have in common, and how alike they are at the least, one standard deviation.
-const ALIKE: [(&str, f64); 6] =
-    [("gamma", 0.06), ("C", 0.3), ("share", 0.1), ("mu_ratio", 0.12), ("offset", 0.3), ("knee", 0.3)];
+const ALIKE: [(&str, f64); 8] = [
+    ("gamma", 0.06),
+    ("C", 0.3),
+    ("share", 0.1),
+    ("mu_ratio", 0.12),
+    ("offset", 0.3),
+    ("knee", 0.3),
+    ("third_share", 0.05),
+    ("third_mu_ratio", 0.1),
+];
 
 /// The family's priors, drawn to the neighbours' mean by as much as the neighbours agree.
-pub fn priors(neighbours: &[Law]) -> Vec<Prior> {
-    let mut priors = Family::TwoSection.priors();
+pub fn priors(family: Family, neighbours: &[Law]) -> Vec<Prior> {
+    let mut priors = family.priors();
     if neighbours.is_empty() {
         return priors;
     }

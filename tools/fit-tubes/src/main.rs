@@ -42,7 +42,7 @@ fn run(names: &[String], check: bool, rows: bool) -> Result<(), Failure> {
         if neighbours.len() != entry.neighbours.len() {
             return Err(format!("{}: a neighbour stands after it in types.toml", entry.name));
         }
-        let fitted = fit::fit(&entry.name, &gathered, &neighbours);
+        let fitted = fit::fit(&entry.name, entry.family(), &gathered, &neighbours);
         laws.insert(entry.name.clone(), fitted.nominal.law);
         let record = record::assemble(&tables, entry, &gathered, &fitted)?;
         print_errors(&record, rows);
@@ -65,8 +65,17 @@ fn wanted(tables: &Tables, names: &[String], name: &str) -> bool {
 fn print_errors(record: &Record, rows: bool) {
     let n = record.fit.nominal;
     println!(
-        "{}: G {} mu {} gamma {} C {} share {} mu_ratio {} offset {} knee {}",
-        record.name, n.g, n.mu, n.gamma, n.c, n.share, n.mu_ratio, n.offset, n.knee
+        "{}: G {} mu {} gamma {} C {} share {} mu_ratio {} offset {} knee {} third {:?}",
+        record.name,
+        n.g,
+        n.mu,
+        n.gamma,
+        n.c,
+        n.share,
+        n.mu_ratio,
+        n.offset,
+        n.knee,
+        n.third_share.zip(n.third_mu_ratio)
     );
     for set in &record.evidence {
         println!("  {} ({})", set.what, set.quantity);
@@ -81,7 +90,8 @@ fn print_errors(record: &Record, rows: bool) {
             println!("      {:?}: {} {} {error:+.1} % {fitted}", row.at, row.published, row.law);
         }
         if set.emission != 1.0 || set.mu_factor != 1.0 {
-            println!("    specimens: emission {}, mu factor {}", set.emission, set.mu_factor);
+            let (emission, mu, offset) = (set.emission, set.mu_factor, set.grid_offset);
+            println!("    specimens: emission {emission}, mu factor {mu}, grid offset {offset} V");
         }
     }
 }

@@ -1,12 +1,13 @@
 //! A type's data file from its published figures and its fits.
 
+use platewright_dsp::triode::fitting::Specimen;
 use platewright_dsp::triode::library::{
     CapacitanceRecord, Errors, Evidence, FitRecord, GridRecord, HeaterRecord, LimitsRecord, Parameters, Record,
     Row, SeriesHeater, Stated, Sure,
 };
 use platewright_dsp::triode::{GridLaw, Law, Section};
 
-use crate::evidence::{Gathered, GatheredRow};
+use crate::evidence::{DOUBTFUL_ROW, Gathered, GatheredRow};
 use crate::fit::Fitted;
 use crate::tables::{Failure, Tables, TypeEntry, TypicalRow};
 
@@ -55,7 +56,7 @@ pub fn assemble(
             ensemble: all(&fitted.ensemble)?,
             ensemble_without_priors: all(&fitted.without_priors)?,
         },
-        evidence: evidence.map(|(set, &factors)| beside(set, factors, &nominal)).collect(),
+        evidence: evidence.map(|(set, specimen)| beside(set, specimen, &nominal)).collect(),
     })
 }
 
@@ -119,31 +120,34 @@ pub fn six_figures(value: f64) -> f64 {
 }
 
 fn rounded(law: &Law) -> Result<Parameters, Failure> {
-    let Law::TwoSection(l) = law else {
-        return Err("the library's types are of the two-section law".into());
-    };
+    let p = Parameters::of(law).ok_or("the library's types are of its own law")?;
     let r = six_figures;
     Ok(Parameters {
-        g: r(l.g),
-        mu: r(l.mu),
-        gamma: r(l.gamma),
-        c: r(l.c),
-        share: r(l.share),
-        mu_ratio: r(l.mu_ratio),
-        offset: r(l.offset),
-        knee: r(l.knee),
+        g: r(p.g),
+        mu: r(p.mu),
+        gamma: r(p.gamma),
+        c: r(p.c),
+        share: r(p.share),
+        mu_ratio: r(p.mu_ratio),
+        offset: r(p.offset),
+        knee: r(p.knee),
+        third_share: p.third_share.map(r),
+        third_mu_ratio: p.third_mu_ratio.map(r),
     })
 }
 
 /// A set of figures beside what the nominal law says, scaled to the set's specimens.
-fn beside(set: &Gathered, factors: (f64, f64), nominal: &Parameters) -> Evidence {
-    let (emission, mu_factor) = (four_figures(factors.0), four_figures(factors.1));
-    let law = nominal.law().scaled(emission, mu_factor);
-    let tube = Section { law, grid: GridLaw::BORROWED, capacitance: Default::default() };
+fn beside(set: &Gathered, found: &Specimen, nominal: &Parameters) -> Evidence {
+    let specimen = Specimen {
+        emission: four_figures(found.emission),
+        mu_factor: four_figures(found.mu_factor),
+        grid_offset: four_figures(found.grid_offset),
+    };
+    let tube = Section { law: nominal.law(), grid: GridLaw::BORROWED, capacitance: Default::default() };
     let row = |row: &GatheredRow| Row {
         at: row.at.iter().map(|&value| six_figures(value)).collect(),
         published: six_figures(row.figure.published),
-        law: four_figures(row.figure.of(&tube)),
+        law: four_figures(row.figure.of_specimen(&tube, &specimen)),
         fitted: row.fitted,
         note: row.note.clone(),
     };
@@ -153,7 +157,7 @@ fn beside(set: &Gathered, factors: (f64, f64), nominal: &Parameters) -> Evidence
             set.rows
                 .iter()
                 .filter(|row| row.fitted == fitted)
-                .map(|row| 100.0 * (row.figure.of(&tube) / row.figure.published - 1.0).abs()),
+                .map(|row| 100.0 * (row.figure.of_specimen(&tube, &specimen) / row.figure.published - 1.0).abs()),
         )
     };
     Evidence {
@@ -161,8 +165,9 @@ fn beside(set: &Gathered, factors: (f64, f64), nominal: &Parameters) -> Evidence
         quantity: set.quantity.into(),
         sure: set.sure,
         source: set.source.clone(),
-        emission,
-        mu_factor,
+        emission: specimen.emission,
+        mu_factor: specimen.mu_factor,
+        grid_offset: specimen.grid_offset,
         at: set.at.iter().map(|&name| name.into()).collect(),
         fitted: errors(true),
         kept_out: errors(false),

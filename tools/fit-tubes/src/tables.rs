@@ -2,6 +2,7 @@
 
 use std::path::{Path, PathBuf};
 
+use platewright_dsp::triode::fitting::Family;
 use serde::Deserialize;
 use serde::de::DeserializeOwned;
 
@@ -97,6 +98,15 @@ pub struct TypeEntry {
     #[serde(default)]
     pub neighbours: Vec<String>,
     pub twin: Option<String>,
+    #[serde(default)]
+    pub third_section: bool,
+}
+
+impl TypeEntry {
+    /// The law that this type is fitted with.
+    pub fn family(&self) -> Family {
+        if self.third_section { Family::ThreeSection } else { Family::TwoSection }
+    }
 }
 
 /// Everything read.

@@ -63,6 +63,7 @@ fn evidence(out: &mut String, set: &Evidence) -> std::fmt::Result {
     writeln!(out, "\n[[evidence]]\nwhat = {}\nquantity = {}", text(&set.what), text(&set.quantity))?;
     source(out, set.sure, &set.source)?;
     writeln!(out, "emission = {}\nmu_factor = {}", number(set.emission), number(set.mu_factor))?;
+    writeln!(out, "grid_offset = {}", number(set.grid_offset))?;
     for (key, errors) in [("fitted", set.fitted), ("kept_out", set.kept_out)] {
         if let Some(e) = errors {
             let (median, worst) = (number(e.median_percent), number(e.worst_percent));
@@ -112,7 +113,11 @@ fn parameters(p: &Parameters) -> String {
         n(p.offset),
         n(p.knee)
     );
-    format!("{{ {head}, {tail} }}")
+    let third = match (p.third_share, p.third_mu_ratio) {
+        (Some(share), Some(ratio)) => format!(", third_share = {}, third_mu_ratio = {}", n(share), n(ratio)),
+        _ => String::new(),
+    };
+    format!("{{ {head}, {tail}{third} }}")
 }
 
 /// The shortest text that reads back as the same number, as a TOML float.

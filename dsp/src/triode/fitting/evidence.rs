@@ -58,6 +58,22 @@ pub enum Quantity {
     Gain,
 }
 
+/// How specimens that were measured differ from their type's nominal.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Specimen {
+    /// Factor of the plate current.
+    pub emission: f64,
+    /// Factor of µ.
+    pub mu_factor: f64,
+    /// Volts by which the grid acts higher than it was set: contact potentials differ from bottle to bottle.
+    pub grid_offset: f64,
+}
+
+impl Specimen {
+    /// No difference.
+    pub const NOMINAL: Specimen = Specimen { emission: 1.0, mu_factor: 1.0, grid_offset: 0.0 };
+}
+
 /// One published figure with its standard error, all in SI units.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Figure {
@@ -75,6 +91,14 @@ pub struct Figure {
 const SEARCH_STEPS: usize = 80;
 
 impl Condition {
+    /// The same with `volts` added to a grid voltage that was set from outside.
+    pub(super) fn shifted(self, volts: f64) -> Condition {
+        match self {
+            Condition::Bias { vpk, vgk } => Condition::Bias { vpk, vgk: vgk + volts },
+            other => other,
+        }
+    }
+
     /// Grid and plate voltage to the cathode at which `tube` settles, V. Grid current is neglected: the figures here
     /// are taken with the grid negative.
     pub fn settle(&self, tube: &Section) -> (f64, f64) {
@@ -166,6 +190,12 @@ impl Figure {
     /// What `tube` says in this figure's place.
     pub fn of(&self, tube: &Section) -> f64 {
         self.quantity.of(tube, &self.condition)
+    }
+
+    /// What the type's nominal `tube` says of a specimen that differs from it as given.
+    pub fn of_specimen(&self, tube: &Section, specimen: &Specimen) -> f64 {
+        let law = tube.law.scaled(specimen.emission, specimen.mu_factor);
+        self.quantity.of(&Section { law, ..*tube }, &self.condition.shifted(specimen.grid_offset))
     }
 }
 

@@ -9,7 +9,7 @@ mod random;
 mod space;
 mod task;
 
-pub use evidence::{Condition, Figure, Quantity, Stage};
+pub use evidence::{Condition, Figure, Quantity, Specimen, Stage};
 pub use random::Random;
 pub use space::{Family, Prior, coordinates};
 pub use task::{Set, Solution, Task};

@@ -1,6 +1,6 @@
 //! All that is known of one type, and the search for the law that meets it best.
 
-use super::evidence::{Figure, Quantity};
+use super::evidence::{Figure, Quantity, Specimen};
 use super::least_squares::{Bounds, Minimum, minimise};
 use super::random::Random;
 use super::space::{Family, Prior};
@@ -11,8 +11,8 @@ use crate::triode::{GridLaw, Law, Section};
 pub struct Set {
     /// The figures.
     pub figures: Vec<Figure>,
-    /// True where they were taken on specimens that may stand off the type's nominal: then a plate-current factor and
-    /// a µ factor between the law and these specimens are found with the rest.
+    /// True where they were taken on specimens that may stand off the type's nominal: then their differences are found
+    /// with the rest.
     pub specimen: bool,
 }
 
@@ -34,8 +34,8 @@ pub struct Task {
 pub struct Solution {
     /// The nominal law.
     pub law: Law,
-    /// For each set, the plate-current and µ factors of its specimens; ones where it has none of its own.
-    pub specimens: Vec<(f64, f64)>,
+    /// How each set's specimens differ from the nominal.
+    pub specimens: Vec<Specimen>,
     /// Half the sum of squared residuals, priors included, each in units of its error.
     pub cost: f64,
 }
@@ -43,11 +43,12 @@ pub struct Solution {
 /// Residuals beyond this many errors count ever less (pseudo-Huber loss): a misprint must not bend the law.
 const ROBUST_FROM: f64 = 2.0;
 
-/// Standard deviations of the logarithms of a measured specimen's plate-current and µ factors. Sixty ECC88 sections
-/// scatter by 13 % and 10 % (derived from published curve-tracer data), and single specimens stand up to 40 % off.
-const SPECIMEN_SPREAD: (f64, f64) = (0.25, 0.08);
+/// Standard deviations of the logarithms of a measured specimen's plate-current and µ factors, and of its grid offset, V.
+/// Sixty ECC88 sections scatter by 13 % and 10 % (derived from published curve-tracer data), single specimens stand up to
+/// 40 % off; the offset is common practice, no source.
+const SPECIMEN_SPREAD: [f64; 3] = [0.25, 0.08, 0.15];
 
-/// Specimens' factors stay between e^−1 and e.
+/// Specimens' factors stay between e^−1 and e, their offsets within a volt.
 const SPECIMEN_BOUNDS: Bounds = Bounds { low: -1.0, high: 1.0 };
 
 /// Iterations of one descent.
@@ -61,26 +62,6 @@ impl Task {
     pub fn without_priors(&self) -> Task {
         let priors = self.priors.iter().map(|prior| Prior { spread: f64::INFINITY, ..*prior }).collect();
         Task { priors, ..self.clone() }
-    }
-
-    /// debug
-    pub fn debug(&self, law: &Law) {
-        let mut at = super::space::coordinates(law);
-        at.resize(self.bounds().len(), 0.0);
-        let mut out = Vec::new();
-        self.residuals(&at, &mut out);
-        let sum: f64 = out.iter().map(|r| 0.5 * r * r).sum();
-        eprint!("{law:?}\n start cost {sum}; ");
-        let m = self.descend(&at, &self.bounds());
-        self.residuals(&m.at, &mut out);
-        let mut k = 0;
-        for set in &self.sets {
-            let c: f64 = out[k..k + set.figures.len()].iter().map(|r| 0.5 * r * r).sum();
-            eprint!("[{} {c:.2}] ", set.figures.len());
-            k += set.figures.len();
-        }
-        eprintln!("priors {:?}", &out[k..]);
-        eprintln!(" cost {} {:?}", m.cost, self.read(&m.at));
     }
 
     /// The best law over many starts: local minima abound.
@@ -118,7 +99,7 @@ impl Task {
     }
 
     fn bounds(&self) -> Vec<Bounds> {
-        let specimens = std::iter::repeat_n(SPECIMEN_BOUNDS, 2 * self.specimen_sets());
+        let specimens = std::iter::repeat_n(SPECIMEN_BOUNDS, SPECIMEN_SPREAD.len() * self.specimen_sets());
         self.priors.iter().map(Prior::bounds).chain(specimens).collect()
     }
 
@@ -129,14 +110,15 @@ impl Task {
     fn residuals(&self, at: &[f64], out: &mut Vec<f64>) {
         out.clear();
         let (law, specimens) = self.read(at);
-        for (set, &(emission, mu_factor)) in self.sets.iter().zip(&specimens) {
-            let tube = self.section(law.scaled(emission, mu_factor));
-            out.extend(set.figures.iter().map(|f| robust((f.of(&tube) - f.published) / f.error)));
+        let tube = self.section(law);
+        for (set, specimen) in self.sets.iter().zip(&specimens) {
+            let miss = |f: &Figure| (f.of_specimen(&tube, specimen) - f.published) / f.error;
+            out.extend(set.figures.iter().map(|figure| robust(miss(figure))));
         }
         let held = self.priors.iter().zip(at).filter(|(prior, _)| prior.spread.is_finite());
         out.extend(held.map(|(prior, x)| (x - prior.centre) / prior.spread));
-        for pair in at[self.priors.len()..].chunks_exact(2) {
-            out.extend([pair[0] / SPECIMEN_SPREAD.0, pair[1] / SPECIMEN_SPREAD.1]);
+        for own in at[self.priors.len()..].chunks_exact(SPECIMEN_SPREAD.len()) {
+            out.extend(own.iter().zip(SPECIMEN_SPREAD).map(|(x, spread)| x / spread));
         }
     }
 
@@ -144,19 +126,18 @@ impl Task {
         Section { law, grid: self.grid, capacitance: Default::default() }
     }
 
-    /// The law and every set's specimen factors at a point of the space.
-    fn read(&self, at: &[f64]) -> (Law, Vec<(f64, f64)>) {
-        let (parameters, mut factors) = at.split_at(self.priors.len());
-        let specimens = self.sets.iter().map(|set| {
-            if !set.specimen {
-                return (1.0, 1.0);
+    /// The law and every set's specimens at a point of the space.
+    fn read(&self, at: &[f64]) -> (Law, Vec<Specimen>) {
+        let (parameters, own) = at.split_at(self.priors.len());
+        let mut own = own.chunks_exact(SPECIMEN_SPREAD.len());
+        let mut next = |set: &Set| if set.specimen { own.next() } else { None };
+        let specimen = |set: &Set| match next(set) {
+            Some(own) => {
+                Specimen { emission: libm::exp(own[0]), mu_factor: libm::exp(own[1]), grid_offset: own[2] }
             }
-            let (own, rest) = factors.split_at(2);
-            factors = rest;
-            (libm::exp(own[0]), libm::exp(own[1]))
-        });
-        let specimens = specimens.collect();
-        (self.family.law(parameters), specimens)
+            None => Specimen::NOMINAL,
+        };
+        (self.family.law(parameters), self.sets.iter().map(specimen).collect())
     }
 
     fn solution(&self, found: &Minimum) -> Solution {
@@ -167,8 +148,8 @@ impl Task {
     /// The best fit of the family with its second section left out, where it has one.
     fn one_section(&self) -> Minimum {
         let mut bounds = self.bounds();
-        if self.family == Family::TwoSection {
-            bounds[SHARE] = Bounds { low: 0.0, high: 0.0 };
+        for &(part, _) in self.parts() {
+            bounds[part] = Bounds { low: 0.0, high: 0.0 };
         }
         let starts = [6.0, 12.0, 25.0, 50.0, 100.0].map(|mu| {
             let mut at: Vec<f64> = self.priors.iter().map(|prior| prior.centre).collect();
@@ -181,18 +162,34 @@ impl Task {
 
     /// Starts with a second section of several sizes beside the one-section fit.
     fn starts(&self, base: &[f64]) -> Vec<Vec<f64>> {
-        if self.family != Family::TwoSection {
+        if !self.family.sections() {
             return Vec::new();
         }
         let pairs = [0.02, 0.15, 0.4].into_iter().flat_map(|share| [0.3, 0.5, 0.75].map(|ratio| (share, ratio)));
-        pairs.map(|(share, ratio)| self.split(base, share, ratio)).collect()
+        let start = |(share, ratio)| {
+            let mut at = base.to_vec();
+            (at[SECOND.0], at[SECOND.1]) = (share, ratio);
+            if self.family == Family::ThreeSection {
+                (at[THIRD.0], at[THIRD.1]) = (0.2 * share, 0.5 * ratio);
+            }
+            self.raised(at)
+        };
+        pairs.map(start).collect()
     }
 
-    /// The one-section fit `base` split in two, µ raised so that the whole keeps its own.
-    fn split(&self, base: &[f64], share: f64, ratio: f64) -> Vec<f64> {
-        let mut at = base.to_vec();
-        (at[SHARE], at[MU_RATIO]) = (share, ratio);
-        at[self.family.mu()] += libm::log(1.0 - share + share / ratio);
+    /// The coordinates of each further section's part and µ ratio.
+    fn parts(&self) -> &'static [(usize, usize)] {
+        match self.family {
+            Family::TwoSection => &[SECOND],
+            Family::ThreeSection => &[SECOND, THIRD],
+            Family::DempwolfZoelzer | Family::Koren => &[],
+        }
+    }
+
+    /// Raises the first section's µ so that the whole keeps the one-section fit's.
+    fn raised(&self, mut at: Vec<f64>) -> Vec<f64> {
+        let more: f64 = self.parts().iter().map(|&(part, ratio)| at[part] * (1.0 / at[ratio] - 1.0)).sum();
+        at[self.family.mu()] += libm::log(1.0 + more);
         self.to_scale(at)
     }
 
@@ -208,11 +205,7 @@ impl Task {
             };
             at[j] = drawn.clamp(prior.low, prior.high);
         }
-        if self.family == Family::TwoSection {
-            let (share, ratio) = (at[SHARE], at[MU_RATIO]);
-            return self.split(&at, share, ratio);
-        }
-        self.to_scale(at)
+        self.raised(at)
     }
 
     /// Moves the coordinate that scales all currents so that half of them lie above the published ones.
@@ -237,9 +230,9 @@ impl Task {
     }
 }
 
-/// Coordinates of the two-section law that the search treats apart.
-const SHARE: usize = 4;
-const MU_RATIO: usize = 5;
+/// Coordinates of the further sections' part and µ ratio.
+const SECOND: (usize, usize) = (4, 5);
+const THIRD: (usize, usize) = (8, 9);
 
 fn best(found: impl Iterator<Item = Minimum>) -> Minimum {
     let none = Minimum { at: Vec::new(), cost: f64::INFINITY };
