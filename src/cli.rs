@@ -109,10 +109,22 @@ pub struct MeasureArguments {
     /// Write every figure to a CSV file, one a row
     #[arg(long, value_name = "FILE")]
     pub csv: Option<PathBuf>,
+    /// How far the tube data carry each harmonic: on, or off to save the time
+    #[arg(long, value_name = "SWITCH", default_value = "on")]
+    pub trust: Switch,
     #[command(flatten)]
     pub units: UnitArguments,
     #[command(flatten)]
     pub figures: FigureArguments,
+}
+
+/// On or off.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum Switch {
+    /// Do it
+    On,
+    /// Leave it out
+    Off,
 }
 
 /// What a sweep goes over.
@@ -174,6 +186,9 @@ pub struct CompareArguments {
     /// Write every figure to this CSV file too, one a row
     #[arg(long, value_name = "FILE")]
     pub csv: Option<PathBuf>,
+    /// How far the tube data carry each harmonic: on, or off to save the time
+    #[arg(long, value_name = "SWITCH", default_value = "on")]
+    pub trust: Switch,
     #[command(flatten)]
     pub units: UnitArguments,
     #[command(flatten)]

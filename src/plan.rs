@@ -6,7 +6,7 @@ use platewright_dsp::analysis::TonePair;
 
 use crate::cli::{
     Arguments, BiasArguments, Command, CompareArguments, DemoArguments, FigureArguments, IntoArguments,
-    MeasureArguments, RenderArguments, SampleFormat, SoundArguments, SweepKind, UnitArguments,
+    MeasureArguments, RenderArguments, SampleFormat, SoundArguments, SweepKind, Switch, UnitArguments,
 };
 use crate::failure::RequestError;
 use crate::iec60062;
@@ -74,6 +74,8 @@ pub struct MeasurePlan {
     pub level: Option<f64>,
     /// Where the figures go as CSV.
     pub csv: Option<PathBuf>,
+    /// Whether harmonics carry the spread of equally good tube fits.
+    pub trust: bool,
     /// How levels are shown.
     pub levels: LevelUnit,
     /// How figures are handed over.
@@ -110,6 +112,8 @@ pub struct ComparePlan {
     pub profile: Option<PathBuf>,
     /// Where the figures go as CSV.
     pub csv: Option<PathBuf>,
+    /// Whether harmonics carry the spread of equally good tube fits.
+    pub trust: bool,
     /// How levels are shown.
     pub levels: LevelUnit,
     /// How sound is rendered.
@@ -237,6 +241,7 @@ impl MeasurePlan {
             play: arguments.play,
             level,
             csv: arguments.csv,
+            trust: arguments.trust == Switch::On,
             levels: arguments.units.into(),
             figures: arguments.figures.into(),
         })
@@ -264,6 +269,7 @@ impl ComparePlan {
             level: LEVEL.option("--level", arguments.level.as_deref())?,
             profile: arguments.profile,
             csv: arguments.csv,
+            trust: arguments.trust == Switch::On,
             levels: arguments.units.into(),
             sound: Sound::new(&arguments.sound)?,
             figures: arguments.figures.into(),

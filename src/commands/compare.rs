@@ -36,6 +36,7 @@ pub fn run(plan: &ComparePlan) -> Result<Outcome, Failure> {
         extras: &[],
         into: &plan.into,
         level: plan.level,
+        trust: plan.trust,
         levels: plan.levels,
         sound: &plan.sound,
     };
@@ -56,6 +57,8 @@ pub struct Comparison<'a> {
     pub into: &'a plan::Into,
     /// Level of the figures, V rms; none is a quarter of full scale.
     pub level: Option<f64>,
+    /// Whether harmonics carry the spread of equally good tube fits.
+    pub trust: bool,
     /// How levels are shown.
     pub levels: LevelUnit,
     /// How sound is rendered.
@@ -100,6 +103,7 @@ impl Comparison<'_> {
         Ok(Asked {
             tones: Some(TONES.map(tone).to_vec()),
             frequencies: Some(FREQUENCIES.to_vec()),
+            trust: self.trust,
             level: self.level,
             level_sweep: true,
             frequency_sweep: true,
@@ -114,7 +118,8 @@ impl Comparison<'_> {
     fn summary_file(&self, figures: &Figures, tables: &[String]) -> String {
         let title = figures.title.as_deref().map(|t| format!("{}\n\n", terminal::plain(t))).unwrap_or_default();
         let warnings = show::warnings(&figures.configurations, false);
-        format!("{title}{warnings}{}\n{}", tables.join("\n"), show::CAUTIONS)
+        let undecided = show::undecided(&figures.undecided);
+        format!("{title}{warnings}{}\n{undecided}\n{}", tables.join("\n"), show::CAUTIONS)
     }
 }
 

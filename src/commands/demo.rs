@@ -33,6 +33,7 @@ pub fn run(plan: &DemoPlan) -> Result<Outcome, Failure> {
         extras: &[("stage.toml", STAGE.as_bytes()), (RECORDING_NAME, RECORDING)],
         into: &plan.into,
         level: None,
+        trust: true,
         levels: LevelUnit::default(),
         sound: &Sound::default(),
     };

@@ -38,6 +38,7 @@ fn asked(plan: &MeasurePlan) -> Asked {
     Asked {
         tones: (!tones.is_empty()).then_some(tones),
         frequencies: (!plan.frequencies.is_empty()).then(|| plan.frequencies.clone()),
+        trust: plan.trust,
         level: plan.level,
         level_sweep,
         frequency_sweep,

@@ -87,7 +87,8 @@ fn print_figures(figures: &Figures, json: bool, tables: &[String]) -> Result<(),
     }
     let title = figures.title.as_deref().map(|t| format!("{}\n", terminal::plain(t))).unwrap_or_default();
     let warnings = show::warnings(&figures.configurations, terminal::colour_on_stdout());
-    terminal::print(&format!("{title}{warnings}{}", tables.join("\n")))
+    let undecided = show::undecided(&figures.undecided);
+    terminal::print(&format!("{title}{warnings}{}\n{undecided}", tables.join("\n")))
 }
 
 /// Which compiled form of the engine runs: `PLATEWRIGHT_PORTABLE=1` forces the one for any CPU.

@@ -1,10 +1,13 @@
 //! Gathers what was asked of every configuration.
 
-use platewright_dsp::analysis::{OperatingPoint, TonePair};
+use platewright_dsp::analysis::{OperatingPoint, TonePair, ensemble};
 use platewright_dsp::circuit::Network;
 use rayon::prelude::*;
 
-use super::{ConfigurationFigures, Figures, SCHEMA, ToneFigures, headroom, imd, noise, point, sweep, tone};
+use super::tone::Trust;
+use super::{
+    ConfigurationFigures, Figures, SCHEMA, ToneFigures, headroom, imd, noise, point, sweep, tone, undecided,
+};
 use crate::failure::{Failure, WorkError};
 use crate::stage_file::{Configuration, StageFile};
 
@@ -13,6 +16,8 @@ use crate::stage_file::{Configuration, StageFile};
 pub struct Asked {
     /// Tones, in the order wanted.
     pub tones: Option<Vec<AskedTone>>,
+    /// Whether each harmonic carries the spread of equally good tube fits.
+    pub trust: bool,
     /// Frequencies of the small-signal response, Hz.
     pub frequencies: Option<Vec<f64>>,
     /// Level of intermodulation and of the frequency sweep's THD, V rms; `None` as for a tone.
@@ -52,7 +57,9 @@ const USUAL_LEVEL: f64 = 0.25;
 pub fn gather(file: &StageFile, asked: &Asked) -> Result<Figures, Failure> {
     let configurations: Result<Vec<_>, Failure> =
         file.configurations.par_iter().map(|configuration| one(configuration, asked)).collect();
-    Ok(Figures { schema: SCHEMA, title: file.title.clone(), configurations: configurations?, renders: None })
+    let configurations = configurations?;
+    let undecided = undecided::of(&configurations);
+    Ok(Figures { schema: SCHEMA, title: file.title.clone(), configurations, undecided, renders: None })
 }
 
 fn one(configuration: &Configuration, asked: &Asked) -> Result<ConfigurationFigures, Failure> {
@@ -64,7 +71,9 @@ fn one(configuration: &Configuration, asked: &Asked) -> Result<ConfigurationFigu
     let response = |f: &Vec<f64>| f.par_iter().map(|&f| tone::response(&network, &at_rest, f)).collect();
     let full_scale = configuration.stage.source.full_scale;
     let level = |asked: Option<f64>| asked.unwrap_or(USUAL_LEVEL * full_scale);
-    let tone = |t: &AskedTone| tone::tone(&network, t.frequency, level(t.level));
+    let members = if asked.trust { ensemble(&configuration.stage) } else { Vec::new() };
+    let trust = if asked.trust { Trust::Ensemble(&members) } else { Trust::Off };
+    let tone = |t: &AskedTone| tone::tone(&network, &trust, t.frequency, level(t.level));
     let tones: Option<Vec<ToneFigures>> = asked.tones.as_ref().map(|t| t.par_iter().map(tone).collect());
     let pair = |&pair: &TonePair| imd::of(&network, pair, level(asked.level));
     let first_tone = tones.as_ref().and_then(|t| t.first());

@@ -10,6 +10,7 @@ mod noise;
 mod point;
 mod sweep;
 mod tone;
+mod undecided;
 
 use std::collections::BTreeMap;
 
@@ -36,6 +37,9 @@ pub struct Figures {
     pub title: Option<String>,
     /// In the stage file's order.
     pub configurations: Vec<ConfigurationFigures>,
+    /// Pairs of configurations whose order in a harmonic the tube data do not settle.
+    #[serde(skip_serializing_if = "Vec::is_empty", default)]
+    pub undecided: Vec<UndecidedFigures>,
     /// Rendered files, where there are any.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub renders: Option<Vec<RenderFigures>>,
@@ -57,6 +61,21 @@ impl Figures {
     pub fn warn(&self) -> bool {
         self.configurations.iter().any(|c| !c.operating_point.warnings.is_empty())
     }
+}
+
+/// Two configurations whose order in a harmonic of the first tone the tube data do not settle.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct UndecidedFigures {
+    /// The harmonic.
+    pub order: u32,
+    /// The two configurations' names, in the file's order.
+    pub between: [String; 2],
+    /// First over second, dB.
+    #[serde(rename = "difference_dB")]
+    pub difference_db: f64,
+    /// Half the range of that difference over equally good fits, dB.
+    #[serde(rename = "trust_dB")]
+    pub trust_db: f64,
 }
 
 /// The figures of one configuration.
@@ -272,6 +291,12 @@ pub struct HarmonicFigures {
     pub dbc: Option<f64>,
     /// φn − n·φ1, 0 ≤ phase < 360.
     pub phase_deg: Option<f64>,
+    /// Half the range from the 5th to the 95th percentile over equally good fits of the tubes' published points.
+    #[serde(rename = "trust_dB")]
+    pub trust_db: Option<f64>,
+    /// What each of these fits makes of it, dBc; kept to compare configurations, not written.
+    #[serde(skip)]
+    pub fits_dbc: Vec<f64>,
     /// Why a figure is `null`.
     #[serde(skip_serializing_if = "Why::is_empty", default)]
     pub why: Why,

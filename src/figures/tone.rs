@@ -1,6 +1,6 @@
 //! Tones and small-signal response.
 
-use platewright_dsp::analysis::{OperatingPoint, Response, SmallSignal, Tone};
+use platewright_dsp::analysis::{OperatingPoint, Response, SmallSignal, Tone, fits, half_range};
 use platewright_dsp::circuit::Network;
 use platewright_dsp::portable::{decibels, degrees, magnitude};
 
@@ -9,11 +9,41 @@ use super::{HarmonicFigures, ResponseFigures, ToneFigures, Why};
 /// Harmonics measured and summed.
 pub const ORDERS: usize = 10;
 
+/// How far the tube data carry a harmonic.
+pub enum Trust<'a> {
+    /// Nobody wants to know.
+    Off,
+    /// The stage with every other set of its tubes' parameters; empty where no tube has one.
+    Ensemble(&'a [Network]),
+}
+
 /// A tone of `input_rms` volts at `frequency` Hz.
-pub fn tone(network: &Network, frequency: f64, input_rms: f64) -> ToneFigures {
-    match Tone::measure(network, frequency, input_rms, ORDERS) {
+pub fn tone(network: &Network, trust: &Trust<'_>, frequency: f64, input_rms: f64) -> ToneFigures {
+    let mut figures = match Tone::measure(network, frequency, input_rms, ORDERS) {
         Ok(tone) => measured(&tone),
         Err(reason) => silent(frequency, input_rms, &reason.to_string()),
+    };
+    judge(&mut figures, trust);
+    figures
+}
+
+/// Puts the ensemble's spread beside every harmonic.
+fn judge(figures: &mut ToneFigures, trust: &Trust<'_>) {
+    let fits = match trust {
+        Trust::Off => Err("--trust off".to_owned()),
+        Trust::Ensemble([]) => Err("the tubes bring no equally good parameter sets".to_owned()),
+        Trust::Ensemble(members) => {
+            fits(members, figures.frequency, figures.input_rms, ORDERS).map_err(|reason| reason.to_string())
+        }
+    };
+    for harmonic in figures.harmonics.iter_mut() {
+        let levels = fits.as_ref().ok().and_then(|fits| fits.get(harmonic.order as usize - 2));
+        harmonic.trust_db = harmonic.dbc.and_then(|_| half_range(levels?));
+        harmonic.fits_dbc = levels.cloned().unwrap_or_default();
+        if harmonic.trust_db.is_none() {
+            let other = || "the harmonic, or one of the fits, is not trusted itself".to_owned();
+            harmonic.why.insert("trust_dB".to_owned(), fits.as_ref().err().cloned().unwrap_or_else(other));
+        }
     }
 }
 
@@ -45,7 +75,7 @@ fn harmonic(tone: &Tone, order: usize) -> HarmonicFigures {
         let reason = "below -220 dBc, or it did not settle as the steps were made finer: not trusted";
         why.extend(["dBc", "phase_deg"].map(|key| (key.to_owned(), reason.to_owned())));
     }
-    HarmonicFigures { order: order as u32, dbc, phase_deg, why }
+    HarmonicFigures { order: order as u32, dbc, phase_deg, trust_db: None, fits_dbc: Vec::new(), why }
 }
 
 fn silent(frequency: f64, input_rms: f64, reason: &str) -> ToneFigures {
@@ -53,6 +83,8 @@ fn silent(frequency: f64, input_rms: f64, reason: &str) -> ToneFigures {
         order: order as u32,
         dbc: None,
         phase_deg: None,
+        trust_db: None,
+        fits_dbc: Vec::new(),
         why: ["dBc", "phase_deg"].map(|key| (key.to_owned(), reason.to_owned())).into(),
     };
     let mut figures = ToneFigures {

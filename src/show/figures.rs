@@ -1,7 +1,10 @@
 //! Operating points, tones and responses as tables.
 
 use super::{SideBySide, units};
-use crate::figures::{ConfigurationFigures, OperatingPointFigures, RatingFigures, TubeFigures};
+use crate::figures::{ConfigurationFigures, HarmonicFigures, OperatingPointFigures, RatingFigures, TubeFigures};
+
+/// Highest harmonic whose phase a table shows; JSON has them all.
+const HIGHEST_PHASE: u32 = 4;
 use crate::plan::LevelUnit;
 
 /// The operating points side by side.
@@ -177,17 +180,25 @@ pub fn tones(configurations: &[ConfigurationFigures], unit: LevelUnit) -> Option
         table.row("THD_F", each().map(|t| t.map(|t| or_dash(t.thd_percent, units::percent))));
         table.row("THD_R", each().map(|t| t.map(|t| or_dash(t.thd_r_percent, units::percent))));
         for order in 2..=first.thd_orders {
-            let cell = |h: &crate::figures::HarmonicFigures| match (h.dbc, h.phase_deg) {
-                (Some(dbc), Some(phase)) => format!("{dbc:.2} {phase:>4.0}°"),
-                _ => "–".to_owned(),
+            let figure = |of: fn(&HarmonicFigures) -> String| {
+                each().map(move |t| t.and_then(|t| t.harmonics.iter().find(|h| h.order == order)).map(of))
             };
-            let figure = |t: Option<&crate::figures::ToneFigures>| {
-                t.and_then(|t| t.harmonics.iter().find(|h| h.order == order)).map(cell)
-            };
-            table.row(&format!("H{order} dBc, phase"), each().map(figure));
+            table.row(&format!("H{order} dBc"), figure(level_with_trust));
+            if order <= HIGHEST_PHASE {
+                table.row("  phase", figure(|h| or_dash(h.phase_deg, |p| format!("{p:.0}°"))));
+            }
         }
     }
     Some(table)
+}
+
+/// A harmonic's level, and how far the tube data carry it where that is known.
+fn level_with_trust(harmonic: &HarmonicFigures) -> String {
+    match (harmonic.dbc, harmonic.trust_db) {
+        (Some(dbc), Some(trust)) => format!("{dbc:.2} ±{trust:.1}"),
+        (Some(dbc), None) => format!("{dbc:.2}"),
+        _ => "–".to_owned(),
+    }
 }
 
 pub(super) fn or_dash(value: Option<f64>, show: impl Fn(f64) -> String) -> String {
@@ -227,11 +238,11 @@ pub fn at_a_glance(configurations: &[ConfigurationFigures], unit: LevelUnit) -> 
     let dbc = |order: u32| {
         tone().map(move |t| {
             let harmonic = t?.harmonics.iter().find(|h| h.order == order)?;
-            harmonic.dbc.map(|dbc| format!("{dbc:.1} dBc"))
+            Some(level_with_trust(harmonic))
         })
     };
-    table.row("H2", dbc(2));
-    table.row("H3", dbc(3));
+    table.row("H2 dBc", dbc(2));
+    table.row("H3 dBc", dbc(3));
     let point = || configurations.iter().map(|c| &c.operating_point);
     table.row("gain tube", point().map(|p| Some(p.gain.tube.clone())));
     table.row("  current", point().map(|p| Some(units::amperes(p.gain.plate_current))));

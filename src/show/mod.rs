@@ -16,7 +16,7 @@ pub use bench_sheet::bench_sheet;
 pub use figures::{at_a_glance, meter_advice, operating_points};
 pub use renders::renders;
 pub use side_by_side::SideBySide;
-pub use warnings::warnings;
+pub use warnings::{undecided, warnings};
 
 /// Columns that a table may fill.
 pub const WIDTH: usize = 80;

@@ -1,6 +1,6 @@
 //! Warnings, the worst first and in red where the terminal has colours.
 
-use crate::figures::{ConfigurationFigures, WarningFigures};
+use crate::figures::{ConfigurationFigures, UndecidedFigures, WarningFigures};
 use crate::terminal::plain;
 
 /// One line a warning, with the configurations that share it; empty where there is none.
@@ -26,4 +26,16 @@ fn line(warning: &WarningFigures, names: &[&str], all: usize, colour: bool) -> S
     let mark = if exceeded { "EXCEEDED" } else { "note" };
     let whose = if names.len() == all { String::new() } else { format!("  [{}]", plain(&names.join("; "))) };
     format!("{red}{mark}: {}{end}{whose}\n", plain(&warning.text))
+}
+
+/// One line for each difference that the tube data do not settle; empty where there is none.
+pub fn undecided(pairs: &[UndecidedFigures]) -> String {
+    let line = |u: &UndecidedFigures| {
+        let [a, b] = u.between.each_ref().map(|name| plain(name));
+        let (order, difference, trust) = (u.order, u.difference_db.abs(), u.trust_db);
+        format!(
+            "H{order}: [{a}] and [{b}] differ by {difference:.1} dB, equally good tube data by ±{trust:.1} dB: these data cannot tell which is lower\n"
+        )
+    };
+    pairs.iter().map(line).collect()
 }

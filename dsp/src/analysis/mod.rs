@@ -11,6 +11,7 @@ mod small_signal;
 mod steady_state;
 mod sweep;
 mod tone;
+mod trust;
 
 pub use cycle::{Cycle, TubeCycle};
 pub use headroom::{Bound, NotReached, Reached, headroom};
@@ -22,3 +23,4 @@ pub use small_signal::{Response, SmallSignal};
 pub use steady_state::{NoSteadyState, Period, bins, harmonics, steady_state};
 pub use sweep::{Band, band, frequencies, level_sweep, levels, ripple_rejection_db};
 pub use tone::Tone;
+pub use trust::{ensemble, fits, half_range, median, percentile};
