@@ -23,7 +23,7 @@ fn by_running(stage: &Stage, rate: f64) -> f64 {
     let second = rate as usize;
     let sample = |k: usize| {
         // A whole second holds a whole number of cycles, so the phase may start again with every one.
-        full_scale_peak(stage) * (std::f64::consts::TAU * TONE * (k % second) as f64 / rate).sin()
+        full_scale_peak(stage) * libm::sin(std::f64::consts::TAU * TONE * (k % second) as f64 / rate)
     };
     let input: Vec<F64x4> = (0..second).map(|k| F64x4([sample(k); LANES])).collect();
     let mut output = vec![F64x4::default(); second];
@@ -32,7 +32,7 @@ fn by_running(stage: &Stage, rate: f64) -> f64 {
         engine.process(&input, &mut output);
     }
     // A Hann window, as what is left of the bias's drift must not leak into every bin.
-    let hann = |k: usize| 1.0 - (std::f64::consts::TAU * k as f64 / second as f64).cos();
+    let hann = |k: usize| 1.0 - libm::cos(std::f64::consts::TAU * k as f64 / second as f64);
     let mut spectrum: Vec<Complex64> =
         output.iter().enumerate().map(|(k, v)| Complex64::new(v.0[0] * hann(k), 0.0)).collect();
     FftPlanner::new().plan_fft_forward(second).process(&mut spectrum);
@@ -40,7 +40,7 @@ fn by_running(stage: &Stage, rate: f64) -> f64 {
     // Below 20 Hz there is the drift.
     let worst =
         (20..20_000usize).filter(|bin| bin.abs_diff(tone) > 2).map(|bin| spectrum[bin].norm()).fold(0.0, f64::max);
-    20.0 * (worst / spectrum[tone].norm()).log10()
+    20.0 * libm::log10(worst / spectrum[tone].norm())
 }
 
 #[test]
