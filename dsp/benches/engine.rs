@@ -67,7 +67,7 @@ fn chord(stage: &Stage) -> Vec<f64> {
         [(82.0, 1.0), (164.0, 0.8), (330.0, 0.6), (659.0, 0.4), (1320.0, 0.25), (2637.0, 0.15), (5274.0, 0.08)];
     let sample = |k: usize| {
         let turn = |(order, &(hertz, size)): (usize, &(f64, f64))| {
-            size * (std::f64::consts::TAU * hertz * k as f64 / RATE + order as f64).sin()
+            size * libm::sin(std::f64::consts::TAU * hertz * k as f64 / RATE + order as f64)
         };
         partials.iter().enumerate().map(turn).sum::<f64>()
     };

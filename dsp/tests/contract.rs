@@ -55,7 +55,9 @@ impl Case {
 fn four_signals(steps: usize) -> Vec<F64x4> {
     let (soft, loud) = (chord(steps, RATE, 2.0), chord(steps, RATE, 60.0));
     let hiss = noise(steps, 3, 5.0);
-    (0..steps).map(|k| F64x4([soft[k], loud[k], hiss[k], if (k / 97) % 2 == 0 { 8.0 } else { -8.0 }])).collect()
+    (0..steps)
+        .map(|k| F64x4([soft[k], loud[k], hiss[k], if (k / 97usize).is_multiple_of(2) { 8.0 } else { -8.0 }]))
+        .collect()
 }
 
 fn run(engine: &mut Engine, input: &[F64x4]) -> Vec<F64x4> {
@@ -216,8 +218,8 @@ contracts! {
         let sine = problems::signals::sine(steps, RATE, 3100.0, 1000.0 / std::f64::consts::SQRT_2);
         let noise = noise(steps, 5, 1000.0);
         let sample = |k: usize| {
-            let square = if (k / 190) % 2 == 0 { 1000.0 } else { -1000.0 };
-            let impulse = if k % 211 == 0 { 1000.0 } else { 0.0 };
+            let square = if (k / 190usize).is_multiple_of(2) { 1000.0 } else { -1000.0 };
+            let impulse = if k.is_multiple_of(211) { 1000.0 } else { 0.0 };
             F64x4([sine[k], square, impulse, noise[k]])
         };
         let mut input: Vec<F64x4> = (0..steps).map(sample).collect();
@@ -291,7 +293,7 @@ fn an_opened_capacitor_keeps_its_charge() {
     if open.shape() != closed.shape() {
         panic!("the two positions of the switch can be refilled into each other");
     }
-    let mut engine = Engine::new(&[closed.clone()], Kernel::detect()).unwrap();
+    let mut engine = Engine::new(std::slice::from_ref(&closed), Kernel::detect()).unwrap();
     // A loud tone shifts the charge away from its state of rest.
     let rest = bias(&engine);
     let loud: Vec<F64x4> =
@@ -330,7 +332,7 @@ fn a_capacitor_that_starts_open_starts_at_0_volts() {
 fn a_trickle_resistor_keeps_a_flip_quiet() {
     let closed = Machine::new(&two_tube_stage(true), RATE).unwrap();
     let open = closed.with_parts_of(&two_tube_stage(false)).unwrap();
-    let mut engine = Engine::new(&[closed.clone()], Kernel::detect()).unwrap();
+    let mut engine = Engine::new(std::slice::from_ref(&closed), Kernel::detect()).unwrap();
     for machine in [&open, &closed, &open] {
         engine.refill(0, machine).unwrap();
         let quiet = vec![F64x4::default(); 38_400];

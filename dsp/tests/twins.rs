@@ -32,7 +32,7 @@ fn by_twin(stage: &Stage, rate: f64, input: &[f64]) -> Vec<f64> {
 fn difference(got: &[f64], want: &[f64]) -> f64 {
     let peak = want.iter().fold(0.0f64, |a, b| a.max(b.abs()));
     let miss = got.iter().zip(want).fold(0.0f64, |a, (g, w)| a.max((g - w).abs()));
-    20.0 * (miss / peak).log10()
+    20.0 * libm::log10(miss / peak)
 }
 
 #[track_caller]

@@ -1,5 +1,6 @@
 //! Figures of a stage: operating point, small signal, steady state.
 
+mod alias;
 mod cycle;
 mod headroom;
 mod intermodulation;
@@ -13,6 +14,7 @@ mod sweep;
 mod tone;
 mod trust;
 
+pub use alias::alias_estimate;
 pub use cycle::{Cycle, TubeCycle};
 pub use headroom::{Bound, NotReached, Reached, headroom};
 pub use intermodulation::{Intermodulation, TonePair};

@@ -36,7 +36,7 @@ impl Cells {
     }
 
     /// Adds a cell of zeros before the first.
-    pub fn from_nothing(mut self) -> Cells {
+    pub fn preceded_by_zeros(mut self) -> Cells {
         self.0.insert(0, F64x4::default());
         self
     }
@@ -70,8 +70,8 @@ mod tests {
 
     #[test]
     fn neighbours_share_value_slope_and_curvature() {
-        let values: Vec<f64> = (0..40).map(|k| (0.3 * k as f64).sin()).collect();
-        let cells = Cells::spline(&values, (0.3, 0.3 * (0.3f64 * 39.0).cos()));
+        let values: Vec<f64> = (0..40).map(|k| libm::sin(0.3 * k as f64)).collect();
+        let cells = Cells::spline(&values, (0.3, 0.3 * libm::cos(0.3 * 39.0)));
         for pair in cells.0.windows(2) {
             let (left, right) = (at(pair[0], 0.5), at(pair[1], -0.5));
             for order in 0..3 {

@@ -37,7 +37,7 @@ fn soft_powers(power: f64, z_high: f64) -> Cells {
     let mut values: Vec<f64> = (0..count).map(value).collect();
     values[0] = 0.0;
     let (end, slope) = (values[count - 1], power * libm::pow(z_high, power - 1.0) / CELLS_PER_UNIT);
-    Cells::spline(&values, (0.0, slope)).from_nothing().straight_on(end, slope)
+    Cells::spline(&values, (0.0, slope)).preceded_by_zeros().straight_on(end, slope)
 }
 
 /// root^(2·power), which is x^power of x = root²: smooth enough at 0 for a spline, which x^power is not.
