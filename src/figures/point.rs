@@ -163,7 +163,7 @@ fn with_unit(value: f64, unit: &str) -> String {
 
 fn beyond_law(stage: &Stage, tube: &TubePoint) -> Option<WarningFigures> {
     let kind = tube_type(stage, tube.role)?;
-    let published = !matches!(kind.section.law, Law::TwoSection(_));
+    let published = !matches!(kind.section.law, Law::TwoSection(_) | Law::ThreeSection(_));
     (published && tube.vpk < PUBLISHED_LAW_VOLTS).then(|| WarningFigures {
         part: tube.role.name().to_owned(),
         limit: "law".to_owned(),

@@ -22,6 +22,8 @@ pub struct Currents {
 pub enum Law {
     /// The library's own: two elementary triodes of unlike µ in parallel, with a knee.
     TwoSection(TwoSection),
+    /// The same with a third elementary triode, for types whose measured curves two cannot follow.
+    ThreeSection(ThreeSection),
     /// Dempwolf & Zölzer, "A physically-motivated triode model for circuit simulations", DAFx-11, 2011.
     DempwolfZoelzer(DempwolfZoelzer),
     /// Koren, "Improved vacuum tube models", 1996.
@@ -49,6 +51,19 @@ pub struct TwoSection {
     pub offset: f64,
     /// Plate voltage below which the current falls off, V.
     pub knee: f64,
+}
+
+/// Parameters of the three-section law: the sum in the two-section law becomes
+/// (1−share−third_share)·S(vpk/µ+vgk+offset)^γ + share·S(vpk/(µ·mu_ratio)+vgk+offset)^γ
+/// + third_share·S(vpk/(µ·third_mu_ratio)+vgk+offset)^γ.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct ThreeSection {
+    /// What the first two sections, their shape and the knee are.
+    pub two: TwoSection,
+    /// Part of the grid that the third section stands for; with the second's at most 1.
+    pub third_share: f64,
+    /// µ of the third section over that of the first.
+    pub third_mu_ratio: f64,
 }
 
 /// Parameters of the `dempwolf-zoelzer` law: Ik = G·S(vpk/µ+vgk)^γ, Ip = Ik − Ig.
@@ -111,6 +126,7 @@ impl Law {
         let (grid_current, grid_by_vgk) = grid.current(vgk);
         let (plate, plate_by_vgk, plate_by_vpk) = match self {
             Law::TwoSection(law) => law.plate(vgk, vpk),
+            Law::ThreeSection(law) => law.plate(vgk, vpk),
             Law::Koren(law) => law.plate(vgk, vpk),
             Law::DempwolfZoelzer(law) => {
                 let (value, slope) = soft_power(vpk / law.mu + vgk, law.c, law.gamma);
@@ -121,17 +137,49 @@ impl Law {
     }
 }
 
+impl Law {
+    /// The law of a tube with `emission` times the plate current and `mu_factor` times the µ.
+    pub fn scaled(&self, emission: f64, mu_factor: f64) -> Law {
+        match *self {
+            Law::TwoSection(l) => Law::TwoSection(l.scaled(emission, mu_factor)),
+            Law::ThreeSection(l) => Law::ThreeSection(ThreeSection { two: l.two.scaled(emission, mu_factor), ..l }),
+            Law::DempwolfZoelzer(l) => {
+                Law::DempwolfZoelzer(DempwolfZoelzer { g: l.g * emission, mu: l.mu * mu_factor, ..l })
+            }
+            Law::Koren(l) => Law::Koren(Koren { kg1: l.kg1 / emission, mu: l.mu * mu_factor, ..l }),
+        }
+    }
+}
+
 impl TwoSection {
     fn plate(&self, vgk: f64, vpk: f64) -> (f64, f64, f64) {
-        let second_mu = self.mu * self.mu_ratio;
-        let (first, first_slope) = soft_power(vpk / self.mu + vgk + self.offset, self.c, self.gamma);
-        let (second, second_slope) = soft_power(vpk / second_mu + vgk + self.offset, self.c, self.gamma);
-        let (w1, w2) = (self.g * (1.0 - self.share), self.g * self.share);
+        self.sum([(1.0 - self.share, 1.0), (self.share, self.mu_ratio)], vgk, vpk)
+    }
+
+    /// The plate current of elementary triodes, each a part of the whole and its µ over the first's.
+    fn sum<const N: usize>(&self, parts: [(f64, f64); N], vgk: f64, vpk: f64) -> (f64, f64, f64) {
         let (fade, fade_slope) = knee_fade(vpk, self.knee);
-        let current = w1 * first + w2 * second;
-        let by_vgk = w1 * first_slope + w2 * second_slope;
-        let by_vpk = w1 * first_slope / self.mu + w2 * second_slope / second_mu;
+        let (mut current, mut by_vgk, mut by_vpk) = (0.0, 0.0, 0.0);
+        for (part, ratio) in parts {
+            let (weight, mu) = (self.g * part, self.mu * ratio);
+            let (value, slope) = soft_power(vpk / mu + vgk + self.offset, self.c, self.gamma);
+            current += weight * value;
+            by_vgk += weight * slope;
+            by_vpk += weight * slope / mu;
+        }
         (fade * current, fade * by_vgk, fade * by_vpk + fade_slope * current)
+    }
+
+    fn scaled(&self, emission: f64, mu_factor: f64) -> TwoSection {
+        TwoSection { g: self.g * emission, mu: self.mu * mu_factor, ..*self }
+    }
+}
+
+impl ThreeSection {
+    fn plate(&self, vgk: f64, vpk: f64) -> (f64, f64, f64) {
+        let first = 1.0 - self.two.share - self.third_share;
+        let parts = [(first, 1.0), (self.two.share, self.two.mu_ratio), (self.third_share, self.third_mu_ratio)];
+        self.two.sum(parts, vgk, vpk)
     }
 }
 

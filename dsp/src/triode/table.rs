@@ -9,7 +9,7 @@ use std::sync::Arc;
 use super::law::softplus;
 use super::lookup::{Lookup, Which, cubic};
 use super::spline::Cells;
-use super::{Currents, GridLaw, Law, Section};
+use super::{Currents, GridLaw, Law, Section, TwoSection};
 use crate::lanes::{F64x4, LANES};
 
 /// z below which ln(1+e^z)^γ is 0 to a double beside its value in use: e^−36 is 2·10⁻¹⁶.
@@ -51,6 +51,7 @@ fn root_powers(power: f64) -> Cells {
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, PartialOrd, Ord)]
 pub(crate) enum LawKind {
     TwoSection,
+    ThreeSection,
     DempwolfZoelzer,
     Koren,
 }
@@ -64,17 +65,21 @@ pub(crate) struct TubeNumbers<V> {
     by_vpk: V,
     by_vgk: V,
     constant: V,
-    /// Place of the second section by vpk.
+    /// Place of the second and third section by vpk.
     second_by_vpk: V,
+    third_by_vpk: V,
     /// Amperes of a section by its table's value.
     weight: V,
     second_weight: V,
+    third_weight: V,
     /// Siemens by vgk of a section by its table's slope.
     slope_weight: V,
     second_slope_weight: V,
+    third_slope_weight: V,
     /// 1/µ of each section: its slope by vpk over that by vgk.
     inverse_mu: V,
     second_inverse_mu: V,
+    third_inverse_mu: V,
     /// knee³ (Koren: Kvb), and three times that.
     knee_cubed: V,
     thrice_knee_cubed: V,
@@ -93,12 +98,16 @@ impl<V> TubeNumbers<V> {
             by_vgk: f(&self.by_vgk),
             constant: f(&self.constant),
             second_by_vpk: f(&self.second_by_vpk),
+            third_by_vpk: f(&self.third_by_vpk),
             weight: f(&self.weight),
             second_weight: f(&self.second_weight),
+            third_weight: f(&self.third_weight),
             slope_weight: f(&self.slope_weight),
             second_slope_weight: f(&self.second_slope_weight),
+            third_slope_weight: f(&self.third_slope_weight),
             inverse_mu: f(&self.inverse_mu),
             second_inverse_mu: f(&self.second_inverse_mu),
+            third_inverse_mu: f(&self.third_inverse_mu),
             knee_cubed: f(&self.knee_cubed),
             thrice_knee_cubed: f(&self.thrice_knee_cubed),
             grid_by_vgk: f(&self.grid_by_vgk),
@@ -117,12 +126,16 @@ pub(crate) fn gather(lanes: [&TubeNumbers<f64>; LANES]) -> TubeNumbers<F64x4> {
         by_vgk: pick(|n| n.by_vgk),
         constant: pick(|n| n.constant),
         second_by_vpk: pick(|n| n.second_by_vpk),
+        third_by_vpk: pick(|n| n.third_by_vpk),
         weight: pick(|n| n.weight),
         second_weight: pick(|n| n.second_weight),
+        third_weight: pick(|n| n.third_weight),
         slope_weight: pick(|n| n.slope_weight),
         second_slope_weight: pick(|n| n.second_slope_weight),
+        third_slope_weight: pick(|n| n.third_slope_weight),
         inverse_mu: pick(|n| n.inverse_mu),
         second_inverse_mu: pick(|n| n.second_inverse_mu),
+        third_inverse_mu: pick(|n| n.third_inverse_mu),
         knee_cubed: pick(|n| n.knee_cubed),
         thrice_knee_cubed: pick(|n| n.thrice_knee_cubed),
         grid_by_vgk: pick(|n| n.grid_by_vgk),
@@ -163,21 +176,17 @@ impl Tables {
 impl TabulatedSection {
     pub fn new(section: &Section) -> TabulatedSection {
         let (kind, power, mut numbers) = match section.law {
-            Law::TwoSection(l) => {
-                let scale = l.g * libm::pow(l.c, -l.gamma);
-                // Never 0, so that a plate at 0 V divides 0 by something.
-                let knee_cubed = (l.knee * l.knee * l.knee).max(1e-60);
+            Law::TwoSection(l) => (LawKind::TwoSection, l.gamma, of_two_sections(&l)),
+            Law::ThreeSection(l) => {
+                let two = of_two_sections(&l.two);
+                let scale = l.two.g * libm::pow(l.two.c, -l.two.gamma);
                 let numbers = TubeNumbers {
-                    constant: l.c * l.offset,
-                    inverse_mu: 1.0 / l.mu,
-                    second_inverse_mu: 1.0 / (l.mu * l.mu_ratio),
-                    weight: scale * (1.0 - l.share),
-                    second_weight: scale * l.share,
-                    knee_cubed,
-                    thrice_knee_cubed: 3.0 * knee_cubed,
-                    ..in_cells(l.c)
+                    weight: two.weight - scale * l.third_share,
+                    third_weight: scale * l.third_share,
+                    third_inverse_mu: 1.0 / (l.two.mu * l.third_mu_ratio),
+                    ..two
                 };
-                (LawKind::TwoSection, l.gamma, numbers)
+                (LawKind::ThreeSection, l.two.gamma, numbers)
             }
             Law::DempwolfZoelzer(l) => {
                 let weight = l.g * libm::pow(l.c, -l.gamma);
@@ -197,8 +206,10 @@ impl TabulatedSection {
         numbers.constant = numbers.constant * CELLS_PER_UNIT + PLACE_OF_ZERO;
         numbers.by_vpk = numbers.by_vgk * numbers.inverse_mu;
         numbers.second_by_vpk = numbers.by_vgk * numbers.second_inverse_mu;
+        numbers.third_by_vpk = numbers.by_vgk * numbers.third_inverse_mu;
         numbers.slope_weight = numbers.by_vgk * numbers.weight;
         numbers.second_slope_weight = numbers.by_vgk * numbers.second_weight;
+        numbers.third_slope_weight = numbers.by_vgk * numbers.third_weight;
         let GridLaw { gg, xi, cg, ig0 } = section.grid;
         numbers.grid_by_vgk = cg * CELLS_PER_UNIT;
         numbers.grid_weight = gg * libm::pow(cg, -xi);
@@ -219,6 +230,22 @@ impl TabulatedSection {
             plate_by_vgk: s.plate_by_vgk,
             plate_by_vpk: s.plate_by_vpk,
         }
+    }
+}
+
+fn of_two_sections(l: &TwoSection) -> TubeNumbers<f64> {
+    let scale = l.g * libm::pow(l.c, -l.gamma);
+    // Never 0, so that a plate at 0 V divides 0 by something.
+    let knee_cubed = (l.knee * l.knee * l.knee).max(1e-60);
+    TubeNumbers {
+        constant: l.c * l.offset,
+        inverse_mu: 1.0 / l.mu,
+        second_inverse_mu: 1.0 / (l.mu * l.mu_ratio),
+        weight: scale * (1.0 - l.share),
+        second_weight: scale * l.share,
+        knee_cubed,
+        thrice_knee_cubed: 3.0 * knee_cubed,
+        ..in_cells(l.c)
     }
 }
 
@@ -252,6 +279,7 @@ pub(crate) fn currents<V: Lookup>(
     let grid_by_vgk = n.grid_slope_weight * grid_slope;
     let (plate, plate_by_vgk, plate_by_vpk) = match kind {
         LawKind::TwoSection => two_section(n, tables, vgk, vpk),
+        LawKind::ThreeSection => three_section(n, tables, vgk, vpk),
         LawKind::Koren => koren(n, tables, vgk, vpk),
         LawKind::DempwolfZoelzer => {
             let place = n.by_vpk * vpk + (n.by_vgk * vgk + n.constant);
@@ -265,14 +293,34 @@ pub(crate) fn currents<V: Lookup>(
 
 #[inline(always)]
 fn two_section<V: Lookup>(n: &TubeNumbers<V>, tables: V::Tables<'_>, vgk: V, vpk: V) -> (V, V, V) {
+    let (current, by_vgk, by_vpk) = two_sections(n, tables, vgk, vpk);
+    faded(n, vpk, current, by_vgk, by_vpk)
+}
+
+#[inline(always)]
+fn three_section<V: Lookup>(n: &TubeNumbers<V>, tables: V::Tables<'_>, vgk: V, vpk: V) -> (V, V, V) {
+    let (current, by_vgk, by_vpk) = two_sections(n, tables, vgk, vpk);
+    let place = n.third_by_vpk * vpk + (n.by_vgk * vgk + n.constant);
+    let (third, slope) = cubic(tables, Which::Plate, place, LAST);
+    let slope = n.third_slope_weight * slope;
+    faded(n, vpk, current + n.third_weight * third, by_vgk + slope, by_vpk + slope * n.third_inverse_mu)
+}
+
+/// The first two sections before the knee: current and its slopes by vgk and vpk.
+#[inline(always)]
+fn two_sections<V: Lookup>(n: &TubeNumbers<V>, tables: V::Tables<'_>, vgk: V, vpk: V) -> (V, V, V) {
     let by_grid = n.by_vgk * vgk + n.constant;
     let (first, first_slope) = cubic(tables, Which::Plate, n.by_vpk * vpk + by_grid, LAST);
     let (second, second_slope) = cubic(tables, Which::Plate, n.second_by_vpk * vpk + by_grid, LAST);
     let (first_slope, second_slope) = (n.slope_weight * first_slope, n.second_slope_weight * second_slope);
     let current = n.weight * first + n.second_weight * second;
-    let by_vgk = first_slope + second_slope;
     let by_vpk = first_slope * n.inverse_mu + second_slope * n.second_inverse_mu;
+    (current, first_slope + second_slope, by_vpk)
+}
 
+/// Current and slopes under the knee's D(vpk).
+#[inline(always)]
+fn faded<V: Lookup>(n: &TubeNumbers<V>, vpk: V, current: V, by_vgk: V, by_vpk: V) -> (V, V, V) {
     let v = vpk.max(V::splat(0.0));
     let square = v * v;
     let cube = square * v;
@@ -304,9 +352,9 @@ fn koren<V: Lookup>(n: &TubeNumbers<V>, tables: V::Tables<'_>, vgk: V, vpk: V) -
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::triode::{DempwolfZoelzer, Koren, TwoSection};
+    use crate::triode::{DempwolfZoelzer, Koren, ThreeSection};
 
-    fn sections() -> [Section; 3] {
+    fn sections() -> [Section; 4] {
         let grid = GridLaw { gg: 6.2e-4, xi: 1.35, cg: 9.3, ig0: 4e-8 };
         let two = TwoSection {
             g: 1.18e-3,
@@ -320,11 +368,9 @@ mod tests {
         };
         let one = DempwolfZoelzer { g: 2.173e-3, mu: 100.2, gamma: 1.28, c: 3.19 };
         let koren = Koren { mu: 28.0, ex: 1.3, kg1: 330.0, kp: 320.0, kvb: 300.0 };
-        [Law::TwoSection(two), Law::DempwolfZoelzer(one), Law::Koren(koren)].map(|law| Section {
-            law,
-            grid,
-            capacitance: Default::default(),
-        })
+        let three = ThreeSection { two, third_share: 0.11, third_mu_ratio: 0.25 };
+        [Law::TwoSection(two), Law::ThreeSection(three), Law::DempwolfZoelzer(one), Law::Koren(koren)]
+            .map(|law| Section { law, grid, capacitance: Default::default() })
     }
 
     /// The largest miss of a tabulated figure from the computed one, over the largest size of that figure nearby.

@@ -2,7 +2,7 @@
 
 use serde::{Deserialize, Serialize};
 
-use crate::triode::{Capacitances, GridLaw, Heater, Law, Limits, Section, TubeType, TwoSection};
+use crate::triode::{Capacitances, GridLaw, Heater, Law, Limits, Section, ThreeSection, TubeType, TwoSection};
 
 /// One type of the library, as its data file gives it.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
@@ -157,7 +157,7 @@ pub struct FitRecord {
     pub ensemble_without_priors: Vec<Parameters>,
 }
 
-/// Parameters of the two-section law.
+/// Parameters of the two-section law, or of the three-section law where there is a third.
 #[derive(Clone, Copy, Debug, PartialEq, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
 pub struct Parameters {
@@ -179,6 +179,12 @@ pub struct Parameters {
     pub offset: f64,
     /// Knee, V.
     pub knee: f64,
+    /// Part of the third section, 0…1.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub third_share: Option<f64>,
+    /// Third µ over the first.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub third_mu_ratio: Option<f64>,
 }
 
 /// Grid-current law and its evidence.
@@ -217,6 +223,8 @@ pub struct Evidence {
     pub emission: f64,
     /// µ factor between the nominal law and the specimens measured here; 1 elsewhere.
     pub mu_factor: f64,
+    /// Volts by which the grids of the specimens measured here act higher than they were set; 0 elsewhere.
+    pub grid_offset: f64,
     /// What each number of `at` is.
     pub at: Vec<String>,
     /// Error of the rows that the fit used; none where it used none.
@@ -261,15 +269,26 @@ pub struct Row {
 impl Parameters {
     /// The parameters as a law.
     pub fn law(&self) -> Law {
-        let Parameters { g, mu, gamma, c, share, mu_ratio, offset, knee } = *self;
-        Law::TwoSection(TwoSection { g, mu, gamma, c, share, mu_ratio, offset, knee })
+        let Parameters { g, mu, gamma, c, share, mu_ratio, offset, knee, third_share, third_mu_ratio } = *self;
+        let two = TwoSection { g, mu, gamma, c, share, mu_ratio, offset, knee };
+        match (third_share, third_mu_ratio) {
+            (Some(third_share), Some(third_mu_ratio)) => {
+                Law::ThreeSection(ThreeSection { two, third_share, third_mu_ratio })
+            }
+            _ => Law::TwoSection(two),
+        }
     }
-}
 
-impl From<TwoSection> for Parameters {
-    fn from(law: TwoSection) -> Self {
-        let TwoSection { g, mu, gamma, c, share, mu_ratio, offset, knee } = law;
-        Parameters { g, mu, gamma, c, share, mu_ratio, offset, knee }
+    /// The parameters of a law of the library's own; `None` for a published law.
+    pub fn of(law: &Law) -> Option<Parameters> {
+        let (two, third) = match *law {
+            Law::TwoSection(two) => (two, None),
+            Law::ThreeSection(three) => (three.two, Some((three.third_share, three.third_mu_ratio))),
+            Law::DempwolfZoelzer(_) | Law::Koren(_) => return None,
+        };
+        let TwoSection { g, mu, gamma, c, share, mu_ratio, offset, knee } = two;
+        let (third_share, third_mu_ratio) = third.unzip();
+        Some(Parameters { g, mu, gamma, c, share, mu_ratio, offset, knee, third_share, third_mu_ratio })
     }
 }
 
