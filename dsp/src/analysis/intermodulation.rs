@@ -130,7 +130,7 @@ mod tests {
         for pair in [TonePair::Smpte, TonePair::Din, TonePair::Difference] {
             let makeup = pair.makeup();
             let peak = 1.7;
-            let steps = makeup.high * STEPS_A_CYCLE | 1;
+            let steps = (makeup.high * STEPS_A_CYCLE) | 1;
             let bent: Vec<f64> =
                 two_tones(&makeup, steps, peak).iter().map(|x| x + a * x * x + b * x * x * x).collect();
             let sizes: Vec<_> =
