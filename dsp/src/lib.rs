@@ -4,7 +4,8 @@
 //! it as a wave digital filter, and measures it. It reads no files, prints nothing and starts no threads; the program
 //! `platewright` owns every side effect.
 //!
-//! Layers point one way: `wave` builds on `triode` and `circuit`, `analysis` on `wave`; `signal` stands alone.
+//! Layers point one way: `wave` builds on `triode` and `circuit`, `analysis` on `wave` and on `signal`, which stands
+//! alone.
 
 pub mod analysis;
 mod chain;

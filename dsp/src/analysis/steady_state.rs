@@ -8,6 +8,7 @@ use num_complex::Complex64;
 
 use crate::circuit::Network;
 use crate::linear::Matrix;
+use crate::signal::CoherentTable;
 use crate::triode::Section;
 use crate::wave::{Modes, PADDED, Rest, Sensitivity, Single, SingleState};
 
@@ -182,22 +183,7 @@ pub fn harmonics(period: &[f64], orders: usize) -> Vec<Complex64> {
 }
 
 /// Complex peak amplitudes of one period at the given multiples of its frequency, sine reference.
-///
-/// Direct sums over a table of one period's sines.
 pub fn bins(period: &[f64], multiples: &[usize]) -> Vec<Complex64> {
-    let n = period.len();
-    let turn = |k: usize| std::f64::consts::TAU * k as f64 / n as f64;
-    let table: Vec<(f64, f64)> = (0..n).map(|k| libm::sincos(turn(k))).collect();
-    let bin = |multiple: &usize| {
-        let (mut sine, mut cosine) = (0.0, 0.0);
-        let mut place = 0;
-        for value in period {
-            let (s, c) = table[place];
-            sine += value * s;
-            cosine += value * c;
-            place = (place + multiple) % n;
-        }
-        Complex64::new(sine, cosine) * (2.0 / n as f64)
-    };
-    multiples.iter().map(bin).collect()
+    let table = CoherentTable::new(period.len());
+    multiples.iter().map(|&multiple| table.component(period, multiple)).collect()
 }
