@@ -89,6 +89,15 @@ pub struct NoiseFigures {
     /// 0 dBFS times that gain over the unweighted output noise.
     #[serde(rename = "signal_to_noise_dB")]
     pub signal_to_noise_db: Option<f64>,
+    /// What the supply's ripple leaves at `o`, V rms; where the stage file states a ripple.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub hum_rms: Option<f64>,
+    /// Hz.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub hum_frequency: Option<f64>,
+    /// 0 dBFS times the gain at 1 kHz over the hum.
+    #[serde(rename = "hum_below_full_scale_dB", skip_serializing_if = "Option::is_none", default)]
+    pub hum_below_full_scale_db: Option<f64>,
     /// THD+N of the first tone asked, noise unweighted.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub thd_n_percent: Option<f64>,

@@ -86,7 +86,7 @@ fn one(configuration: &Configuration, asked: &Asked) -> Result<ConfigurationFigu
             .frequency_sweep
             .then(|| sweep::over_frequency(&network, &at_rest, level(asked.level))),
         imd: asked.imd.as_ref().map(|pairs| pairs.par_iter().map(pair).collect()),
-        noise: asked.noise.then(|| noise::of(&network, &at_rest, full_scale, first_tone)),
+        noise: asked.noise.then(|| noise::of(&configuration.stage, &network, &at_rest, first_tone)),
         headroom: asked.headroom.then(|| headroom::of(&network, &at_rest, full_scale, asked.play_peak)),
         tones,
     })

@@ -40,6 +40,8 @@ pub const ELECTRODES: Quantity = or_zero(quantity("capacitance", "F", 1e-18, 1e-
 pub const VOLTAGE: Quantity = quantity("voltage", "V", 1e-6, 1e5, "290");
 /// A current.
 pub const CURRENT: Quantity = quantity("current", "A", 1e-9, 1e3, "\"20m\"");
+/// A frequency.
+pub const FREQUENCY: Quantity = quantity("frequency", "Hz", 1e-3, 1e7, "100");
 /// A power.
 pub const POWER: Quantity = quantity("power", "W", 1e-6, 1e5, "2");
 /// A part's tolerance as a fraction.
