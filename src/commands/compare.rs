@@ -8,6 +8,7 @@ use crate::audio_files::{OutputPlan, Recording};
 use crate::failure::{Failure, Outcome};
 use crate::figures::{Asked, AskedTone, Figures, gather};
 use crate::plan::{self, ComparePlan, LevelUnit};
+use crate::profile::Profile;
 use crate::rendering::{self, Job};
 use crate::stage_file::StageFile;
 use crate::{show, terminal};
@@ -28,13 +29,15 @@ const FREQUENCIES: [f64; 7] = [5.0, 20.0, 100.0, 1000.0, 10_000.0, 20_000.0, 100
 pub fn run(plan: &ComparePlan) -> Result<Outcome, Failure> {
     let file = super::stage(&plan.stage)?;
     let recordings = super::recordings(&plan.play)?;
-    let inputs: Vec<_> = plan.play.iter().chain([&plan.stage]).cloned().collect();
+    let profile = plan.profile.as_deref().map(Profile::load).transpose()?;
+    let inputs: Vec<_> = plan.play.iter().chain([&plan.stage]).chain(&plan.profile).cloned().collect();
     let comparison = Comparison {
         file: &file,
         recordings: &recordings,
         inputs: &inputs,
         extras: &[],
         into: &plan.into,
+        profile: profile.as_ref(),
         level: plan.level,
         trust: plan.trust,
         levels: plan.levels,
@@ -55,6 +58,8 @@ pub struct Comparison<'a> {
     pub extras: &'a [(&'a str, &'a [u8])],
     /// Where the results go.
     pub into: &'a plan::Into,
+    /// Harmonics that are wanted.
+    pub profile: Option<&'a Profile>,
     /// Level of the figures, V rms; none is a quarter of full scale.
     pub level: Option<f64>,
     /// Whether harmonics carry the spread of equally good tube fits.
@@ -110,6 +115,7 @@ impl Comparison<'_> {
             imd: Some(vec![TonePair::Smpte, TonePair::Din, TonePair::Difference]),
             noise: true,
             headroom: true,
+            profile: self.profile.cloned(),
             play_peak: Some(super::true_peak(self.recordings)?),
             ..Asked::default()
         })

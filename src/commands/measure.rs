@@ -4,6 +4,7 @@ use crate::cli::SweepKind;
 use crate::failure::{Failure, Outcome};
 use crate::figures::{Asked, AskedTone, gather};
 use crate::plan::MeasurePlan;
+use crate::profile::Profile;
 use crate::show;
 
 /// The tone that is shown when nothing is asked, Hz.
@@ -17,7 +18,8 @@ pub fn run(plan: &MeasurePlan) -> Result<Outcome, Failure> {
     let file = super::stage(&plan.stage)?;
     let recordings = super::recordings(&plan.play)?;
     let play_peak = if recordings.is_empty() { None } else { Some(super::true_peak(&recordings)?) };
-    let figures = gather(&file, &Asked { play_peak, ..asked(plan) })?;
+    let profile = plan.profile.as_deref().map(Profile::load).transpose()?;
+    let figures = gather(&file, &Asked { play_peak, profile, ..asked(plan) })?;
     super::print_figures(&figures, plan.figures.json, &show::measured(&figures.configurations, plan.levels))?;
     Ok(Outcome::of(plan.figures.strict, figures.warn()))
 }
@@ -30,6 +32,7 @@ fn asked(plan: &MeasurePlan) -> Asked {
     let nothing = tones.is_empty()
         && plan.frequencies.is_empty()
         && plan.imd.is_empty()
+        && plan.profile.is_none()
         && !(plan.noise || plan.headroom || level_sweep || frequency_sweep);
     // A person who asks for nothing wants to see something; a program that reads JSON wants what it asked for.
     if nothing && !plan.figures.json {

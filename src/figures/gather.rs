@@ -6,9 +6,11 @@ use rayon::prelude::*;
 
 use super::tone::Trust;
 use super::{
-    ConfigurationFigures, Figures, SCHEMA, ToneFigures, headroom, imd, noise, point, sweep, tone, undecided,
+    ConfigurationFigures, Figures, SCHEMA, ToneFigures, headroom, imd, noise, point, profile, sweep, tone,
+    undecided,
 };
 use crate::failure::{Failure, WorkError};
+use crate::profile::Profile;
 use crate::stage_file::{Configuration, StageFile};
 
 /// What is asked beside the operating point.
@@ -32,6 +34,8 @@ pub struct Asked {
     pub noise: bool,
     /// Whether to look for the headroom.
     pub headroom: bool,
+    /// Harmonics that are wanted.
+    pub profile: Option<Profile>,
     /// True peak of the recordings played, as a part of full scale.
     pub play_peak: Option<f64>,
     /// Input resistance of a meter to hold to every node, Ω.
@@ -88,6 +92,7 @@ fn one(configuration: &Configuration, asked: &Asked) -> Result<ConfigurationFigu
         imd: asked.imd.as_ref().map(|pairs| pairs.par_iter().map(pair).collect()),
         noise: asked.noise.then(|| noise::of(&configuration.stage, &network, &at_rest, first_tone)),
         headroom: asked.headroom.then(|| headroom::of(&network, &at_rest, full_scale, asked.play_peak)),
+        profile: asked.profile.as_ref().map(|wanted| profile::of(&network, wanted, full_scale)),
         tones,
     })
 }

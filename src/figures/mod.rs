@@ -8,6 +8,7 @@ mod headroom;
 mod imd;
 mod noise;
 mod point;
+mod profile;
 mod sweep;
 mod tone;
 mod undecided;
@@ -106,6 +107,9 @@ pub struct ConfigurationFigures {
     /// Headroom, when asked.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub headroom: Option<HeadroomFigures>,
+    /// A target profile's misses, when asked.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub profile: Option<ProfileFigures>,
 }
 
 /// The stage at rest.

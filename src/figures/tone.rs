@@ -9,6 +9,9 @@ use super::{HarmonicFigures, ResponseFigures, ToneFigures, Why};
 /// Harmonics measured and summed.
 pub const ORDERS: usize = 10;
 
+/// Why a harmonic is not shown.
+pub const NOT_TRUSTED: &str = "below -220 dBc, or it did not settle as the steps were made finer: not trusted";
+
 /// How far the tube data carry a harmonic.
 pub enum Trust<'a> {
     /// Nobody wants to know.
@@ -72,8 +75,7 @@ fn harmonic(tone: &Tone, order: usize) -> HarmonicFigures {
     let (dbc, phase_deg) = (tone.dbc(order), tone.relative_phase(order));
     let mut why = Why::new();
     if dbc.is_none() {
-        let reason = "below -220 dBc, or it did not settle as the steps were made finer: not trusted";
-        why.extend(["dBc", "phase_deg"].map(|key| (key.to_owned(), reason.to_owned())));
+        why.extend(["dBc", "phase_deg"].map(|key| (key.to_owned(), NOT_TRUSTED.to_owned())));
     }
     HarmonicFigures { order: order as u32, dbc, phase_deg, trust_db: None, fits_dbc: Vec::new(), why }
 }

@@ -3,8 +3,8 @@
 //! Unknown keys, keys whose time has not come, overrides and values are all checked against it.
 
 use super::quantity::{
-    self as q, CAPACITOR, CURRENT, ELECTRODES, FORMAT, FRACTION, FREQUENCY, OR_WIRE, POWER, Quantity, RESISTOR, TOLERANCE,
-    VOLTAGE,
+    self as q, CAPACITOR, CURRENT, ELECTRODES, FORMAT, FRACTION, FREQUENCY, OR_WIRE, POWER, Quantity, RESISTOR,
+    TOLERANCE, VOLTAGE,
 };
 
 /// One key.
