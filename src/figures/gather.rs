@@ -6,7 +6,7 @@ use rayon::prelude::*;
 
 use super::tone::Trust;
 use super::{
-    ConfigurationFigures, Figures, SCHEMA, ToneFigures, headroom, imd, noise, point, profile, sweep, tone,
+    ConfigurationFigures, Figures, SCHEMA, ToneFigures, headroom, imd, law, noise, point, profile, sweep, tone,
     undecided,
 };
 use crate::failure::{Failure, WorkError};
@@ -77,7 +77,10 @@ fn one(configuration: &Configuration, asked: &Asked) -> Result<ConfigurationFigu
     let level = |asked: Option<f64>| asked.unwrap_or(USUAL_LEVEL * full_scale);
     let members = if asked.trust { ensemble(&configuration.stage) } else { Vec::new() };
     let trust = if asked.trust { Trust::Ensemble(&members) } else { Trust::Off };
-    let tone = |t: &AskedTone| tone::tone(&network, &trust, t.frequency, level(t.level));
+    let tone = |t: &AskedTone| ToneFigures {
+        warnings: law::under_tone(&configuration.stage, &network, t.frequency, level(t.level)),
+        ..tone::tone(&network, &trust, t.frequency, level(t.level))
+    };
     let tones: Option<Vec<ToneFigures>> = asked.tones.as_ref().map(|t| t.par_iter().map(tone).collect());
     let pair = |&pair: &TonePair| imd::of(&network, pair, level(asked.level));
     let first_tone = tones.as_ref().and_then(|t| t.first());

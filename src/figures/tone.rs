@@ -59,6 +59,7 @@ fn measured(tone: &Tone) -> ToneFigures {
         thd_percent: tone.thd_f().map(|thd| 100.0 * thd),
         thd_r_percent: tone.thd_r().map(|thd| 100.0 * thd),
         thd_orders: ORDERS as u32,
+        warnings: Vec::new(),
         harmonics: (2..=ORDERS).map(|order| harmonic(tone, order)).collect(),
         why: Why::new(),
     };
@@ -97,6 +98,7 @@ fn silent(frequency: f64, input_rms: f64, reason: &str) -> ToneFigures {
         thd_percent: None,
         thd_r_percent: None,
         thd_orders: ORDERS as u32,
+        warnings: Vec::new(),
         harmonics: (2..=ORDERS).map(none).collect(),
         why: Why::new(),
     };
