@@ -1,9 +1,10 @@
 //! `platewright compare`: all figures of every configuration, their sound, and the report.
 
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 
 use platewright_dsp::analysis::TonePair;
 
+use super::csv_file::CsvFile;
 use crate::audio_files::{OutputPlan, Recording};
 use crate::failure::{Failure, Outcome};
 use crate::figures::{Asked, AskedTone, Figures, gather};
@@ -37,6 +38,7 @@ pub fn run(plan: &ComparePlan) -> Result<Outcome, Failure> {
         inputs: &inputs,
         extras: &[],
         into: &plan.into,
+        csv: plan.csv.as_deref(),
         profile: profile.as_ref(),
         level: plan.level,
         trust: plan.trust,
@@ -58,6 +60,8 @@ pub struct Comparison<'a> {
     pub extras: &'a [(&'a str, &'a [u8])],
     /// Where the results go.
     pub into: &'a plan::Into,
+    /// Where the figures go as CSV.
+    pub csv: Option<&'a Path>,
     /// Harmonics that are wanted.
     pub profile: Option<&'a Profile>,
     /// Level of the figures, V rms; none is a quarter of full scale.
@@ -81,6 +85,8 @@ impl Comparison<'_> {
         files.extend([REPORT, SUMMARY].map(PathBuf::from));
         files.extend(self.extras.iter().map(|(name, _)| PathBuf::from(name)));
         let outputs = OutputPlan::check(&self.into.folder, self.into.replace, &files, self.inputs)?;
+        let targets: Vec<PathBuf> = outputs.targets().collect();
+        let csv = CsvFile::check(self.csv, self.into.replace, self.inputs, &targets)?;
         let mut figures = gather(self.file, &self.asked()?)?;
 
         let folder = outputs.create()?;
@@ -92,6 +98,9 @@ impl Comparison<'_> {
         staged.push(folder.stage_contents(SUMMARY, self.summary_file(&figures, &tables).as_bytes())?);
         for (name, contents) in self.extras {
             staged.push(folder.stage_contents(name, contents)?);
+        }
+        if let Some(csv) = csv {
+            staged.push(csv.stage(&figures)?.1);
         }
         folder.commit(staged)?;
 

@@ -1,5 +1,6 @@
 //! `platewright measure`: figures of every configuration.
 
+use super::csv_file::CsvFile;
 use crate::cli::SweepKind;
 use crate::failure::{Failure, Outcome};
 use crate::figures::{Asked, AskedTone, gather};
@@ -19,7 +20,13 @@ pub fn run(plan: &MeasurePlan) -> Result<Outcome, Failure> {
     let recordings = super::recordings(&plan.play)?;
     let play_peak = if recordings.is_empty() { None } else { Some(super::true_peak(&recordings)?) };
     let profile = plan.profile.as_deref().map(Profile::load).transpose()?;
+    let inputs: Vec<_> = plan.play.iter().chain([&plan.stage]).chain(&plan.profile).cloned().collect();
+    let csv = CsvFile::check(plan.csv.as_deref(), plan.replace, &inputs, &[])?;
     let figures = gather(&file, &Asked { play_peak, profile, ..asked(plan) })?;
+    if let Some(csv) = csv {
+        let (folder, staged) = csv.stage(&figures)?;
+        folder.commit(vec![staged])?;
+    }
     super::print_figures(&figures, plan.figures.json, &show::measured(&figures.configurations, plan.levels))?;
     Ok(Outcome::of(plan.figures.strict, figures.warn()))
 }

@@ -3,6 +3,7 @@
 //! A figure that cannot be had is `null`, and the object's `why` maps its key to the reason.
 
 mod bench;
+mod csv;
 mod gather;
 mod headroom;
 mod imd;

@@ -8,6 +8,8 @@ use serde::{Deserialize, Serialize};
 
 /// The tone whose alias products are estimated, Hz: near the end of hearing, where they are worst.
 const ALIAS_TONE: f64 = 19_000.0;
+/// Alias products below this are not told apart from the arithmetic.
+const TRUSTED_DBC: f64 = -220.0;
 /// The tone under which the plate voltages are looked at, Hz.
 const LAW_TONE: f64 = 1000.0;
 
@@ -18,7 +20,7 @@ pub struct Estimate {
     pub input_rms: f64,
     /// Hz: 19 kHz, or less where the recording's sample rate ends below.
     pub alias_tone: f64,
-    /// The largest alias product below 20 kHz over that tone; `null` for silence.
+    /// The largest alias product below 20 kHz over that tone; `null` for silence and below −220.
     #[serde(rename = "alias_dBc")]
     pub alias_dbc: Option<f64>,
     /// Tubes whose published law a 1 kHz sine of that level takes beyond what it was made for, in words.
@@ -39,9 +41,9 @@ impl Estimate {
             let rate = f64::from(sample_rate) * oversampling as f64;
             let peak_volts = input_rms * std::f64::consts::SQRT_2;
             let estimate = alias_estimate(&network, rate, alias_tone, peak_volts);
-            estimate.map_err(|reason| reason.to_string()).and_then(|dbc| {
-                if dbc.is_finite() { Ok(dbc) } else { Err("nothing but the tone is there".to_owned()) }
-            })
+            estimate
+                .map_err(|reason| reason.to_string())
+                .and_then(|dbc| if dbc >= TRUSTED_DBC { Ok(dbc) } else { Err(format!("below {TRUSTED_DBC} dBc")) })
         } else {
             Err("the recording is silent".to_owned())
         };

@@ -173,18 +173,15 @@ pub fn alias_lines(figures: &[RenderFigures]) -> Vec<String> {
     let line = |of_recording: &[RenderFigures]| {
         let dbc = |f: &&RenderFigures| f.estimate.alias_dbc.unwrap_or(f64::NEG_INFINITY);
         let worst = of_recording.iter().max_by(|a, b| dbc(a).total_cmp(&dbc(b)))?;
-        let estimate = worst.estimate.alias_dbc?;
-        let more = if estimate > ALIASES_HEARD && worst.oversampling < 64 {
-            format!("; --oversample {} brings less", 2 * worst.oversampling)
-        } else {
-            String::new()
+        let (tone, recording) = (worst.estimate.alias_tone / 1000.0, &worst.recording);
+        let found = match (worst.estimate.alias_dbc, worst.estimate.why.get("alias_dBc")) {
+            (Some(estimate), _) => format!("{estimate:.0} dBc at worst, in {}", worst.configuration),
+            (None, reason) => reason.cloned().unwrap_or_default(),
         };
-        Some(format!(
-            "alias estimate for a {} kHz tone at the peak of {}: {estimate:.0} dBc at worst, in {}{more}",
-            worst.estimate.alias_tone / 1000.0,
-            worst.recording,
-            worst.configuration
-        ))
+        let heard = worst.estimate.alias_dbc.is_some_and(|dbc| dbc > ALIASES_HEARD) && worst.oversampling < 64;
+        let more =
+            if heard { format!("; --oversample {} brings less", 2 * worst.oversampling) } else { String::new() };
+        Some(format!("alias estimate for a {tone} kHz tone at the peak of {recording}: {found}{more}"))
     };
     figures.chunk_by(|a, b| a.recording == b.recording).filter_map(line).collect()
 }

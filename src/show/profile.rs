@@ -24,7 +24,7 @@ pub fn profile(configurations: &[ConfigurationFigures], unit: LevelUnit) -> Opti
     row("level out", &|p| or_dash(p.output_rms, |volts| units::level(volts, unit)));
     for (index, harmonic) in first.harmonics.iter().enumerate() {
         row(&label(harmonic), &|p| or_dash(p.harmonics.get(index).and_then(|h| h.got), |dbc| format!("{dbc:.2}")));
-        row("  off by", &|p| or_dash(p.harmonics.get(index).and_then(|h| h.miss_db), |db| format!("{db:+.2} dB")));
+        row("  off by", &|p| or_dash(p.harmonics.get(index).and_then(|h| h.miss_db), miss));
     }
     Some(table)
 }
@@ -37,4 +37,9 @@ fn label(harmonic: &ProfileHarmonicFigures) -> String {
         _ => "=",
     };
     format!("H{} {sign} {} dBc", harmonic.order, harmonic.wanted)
+}
+
+/// What lies beyond the tolerance, if anything.
+fn miss(db: f64) -> String {
+    if db == 0.0 { "met".to_owned() } else { format!("{db:+.2} dB") }
 }
