@@ -106,9 +106,12 @@ pub struct MeasureArguments {
     /// Level of everything that does not name its own, V rms at the input [default: a quarter of source.full_scale]
     #[arg(long, value_name = "V")]
     pub level: Option<String>,
-    /// Write every figure to a CSV file, one a row
+    /// Write every figure to a CSV file, one a row; one that exists is refused
     #[arg(long, value_name = "FILE")]
     pub csv: Option<PathBuf>,
+    /// Let --csv overwrite a file that exists
+    #[arg(long, requires = "csv")]
+    pub replace: bool,
     /// How far the tube data carry each harmonic: on, or off to save the time
     #[arg(long, value_name = "SWITCH", default_value = "on")]
     pub trust: Switch,
@@ -183,7 +186,7 @@ pub struct CompareArguments {
     /// A profile file: rank the configurations by how far they miss the harmonics it wants
     #[arg(long, value_name = "FILE")]
     pub profile: Option<PathBuf>,
-    /// Write every figure to this CSV file too, one a row
+    /// Write every figure to this CSV file too, one a row; one that exists is refused unless --replace
     #[arg(long, value_name = "FILE")]
     pub csv: Option<PathBuf>,
     /// How far the tube data carry each harmonic: on, or off to save the time

@@ -3,7 +3,7 @@
 use std::fmt;
 use std::io;
 
-use crate::stage_file::Diagnosis;
+use crate::spanned::problem::Diagnosis;
 use crate::terminal::plain;
 
 /// Exit code of a run that did what was asked.
@@ -53,8 +53,8 @@ pub enum Failure {
 /// A request or a file that is wrong.
 #[derive(Debug)]
 pub enum RequestError {
-    /// A stage file with problems, each with its place.
-    StageFile(Box<Diagnosis>),
+    /// A file of the user's with problems, each with its place.
+    File(Box<Diagnosis>),
     /// Anything else: what is wrong, and what to do.
     Refused {
         /// What is wrong and where, with what was expected.
@@ -115,7 +115,7 @@ impl Failure {
     /// The message for a person, coloured where `colour` says so; nothing where nobody needs one.
     pub fn message(&self, colour: bool) -> Option<String> {
         match self {
-            Self::Request(RequestError::StageFile(diagnosis)) => Some(diagnosis.render(colour)),
+            Self::Request(RequestError::File(diagnosis)) => Some(diagnosis.render(colour)),
             Self::Request(RequestError::Refused { problem, remedy })
             | Self::Work(WorkError::Failed { problem, remedy }) => Some(two_lines(problem, remedy)),
             Self::Work(error) => Some(format!("error: {error}")),

@@ -8,8 +8,10 @@ mod figures;
 mod iec60062;
 mod option_values;
 mod plan;
+mod profile;
 mod rendering;
 mod show;
+mod spanned;
 mod stage_file;
 mod terminal;
 

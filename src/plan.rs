@@ -74,6 +74,8 @@ pub struct MeasurePlan {
     pub level: Option<f64>,
     /// Where the figures go as CSV.
     pub csv: Option<PathBuf>,
+    /// Whether that file may exist already.
+    pub replace: bool,
     /// Whether harmonics carry the spread of equally good tube fits.
     pub trust: bool,
     /// How levels are shown.
@@ -241,6 +243,7 @@ impl MeasurePlan {
             play: arguments.play,
             level,
             csv: arguments.csv,
+            replace: arguments.replace,
             trust: arguments.trust == Switch::On,
             levels: arguments.units.into(),
             figures: arguments.figures.into(),

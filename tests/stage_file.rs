@@ -249,14 +249,24 @@ fn tube_with_a_parameter_too_few_and_one_too_many() {
 }
 
 #[test]
+fn ripple_without_its_frequency_or_its_size() {
+    let text = with("voltage = 272.0", "voltage = 272.0\nripple_rms = 0.1");
+    refused(&text, "[supply]", &["`supply.ripple_frequency` is missing", "add ripple_frequency = 100"]);
+    let text = with("voltage = 272.0", "voltage = 272.0\nripple_frequency = 100");
+    refused(&text, "[supply]", &["`supply.ripple_rms` is missing"]);
+    let text = with("voltage = 272.0", "voltage = 272.0\nripple_frequency = 100\nripple_rms = -0.1");
+    refused(&text, "ripple_rms", &["`supply.ripple_rms` is -0.1 V, which is negative"]);
+}
+
+#[test]
 fn another_format() {
     refused(&format!("format = 2\n{STAGE}"), "format = 2", &["`format` is 2", "reads format 1"]);
 }
 
 #[test]
 fn a_key_of_a_later_version() {
-    let text = with("voltage = 272.0", "voltage = 272.0\nripple_rms = 0.1");
-    refused(&text, "ripple_rms", &["`supply.ripple_rms` is not available yet"]);
+    let text = with("voltage = 272.0", "voltage = 272.0\ncold_voltage = 400");
+    refused(&text, "cold_voltage", &["`supply.cold_voltage` is not available yet"]);
 }
 
 #[test]

@@ -4,8 +4,10 @@
 
 mod problems;
 
+use platewright_dsp::Complex64;
 use platewright_dsp::analysis::*;
 use platewright_dsp::circuit::*;
+use platewright_dsp::triode::Capacitances;
 use problems::{known_answer, two_tube_stage};
 
 fn db(ratio: f64) -> f64 {
@@ -111,4 +113,38 @@ fn a_bare_resistor_makes_its_thermal_noise() {
     let want = (4.0 * 1.380649e-23 * 300.0 * resistance * 19_980.0f64).sqrt();
     assert!((noise.output_rms / want - 1.0).abs() < 1e-4, "{} V against {want} V", noise.output_rms);
     assert!(noise.output_rms_a < noise.output_rms);
+}
+
+/// By hand, with the tube's own capacitances and the load's left out: the supply's resistance and its
+/// reservoir, beside which stands everything fed from node B, divide the ripple first; plate resistor and what stands at
+/// the plate divide what is left. With the cathode resistor not bypassed the tube is rp + (µ+1)·Rk at its plate.
+#[test]
+fn ripple_reaches_the_output_as_the_dividers_say() {
+    let mut stage = two_tube_stage(true);
+    stage.follower = None;
+    stage.gain.bypass = None;
+    stage.output.load_capacitance = None;
+    let none = Capacitances { grid_cathode: 0.0, grid_plate: 0.0, plate_cathode: 0.0 };
+    std::sync::Arc::make_mut(&mut stage.gain.tube).section.capacitance = none;
+    let network = Network::of(&stage);
+    let point = OperatingPoint::solve(&network, None).unwrap();
+    let small = SmallSignal::new(&network, &point);
+    for hertz in [50.0, 100.0, 120.0] {
+        let omega = std::f64::consts::TAU * hertz;
+        let capacitor = |farads: f64| Complex64::new(0.0, -1.0 / (omega * farads));
+        let beside = |a: Complex64, b: Complex64| a * b / (a + b);
+        let ohms = |value: f64| Complex64::new(value, 0.0);
+        let tube = &point.tubes[0];
+        let tube = ohms(tube.rp() + (tube.mu() + 1.0) * stage.gain.cathode_resistor);
+        let load = beside(ohms(stage.output.bleed), ohms(stage.output.load_resistance));
+        let at_plate = beside(tube, capacitor(stage.output.capacitor) + load);
+        let fed = at_plate + stage.gain.plate_resistor;
+        let reservoir = beside(capacitor(stage.supply.reservoir), fed);
+        let to_b = reservoir / (reservoir + stage.supply.resistance);
+        let by_hand = to_b * at_plate / fed * load / (load + capacitor(stage.output.capacitor));
+        let got = supply_transfer(&small, hertz).unwrap();
+        assert!((got - by_hand).norm() < 1e-9 * by_hand.norm(), "{hertz} Hz: {got} against {by_hand}");
+        let rejection = ripple_rejection_db(&small, hertz).unwrap();
+        assert!((rejection + db(by_hand.norm())).abs() < 1e-8, "{hertz} Hz: {rejection} dB");
+    }
 }

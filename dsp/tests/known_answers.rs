@@ -4,7 +4,9 @@
 
 mod problems;
 
-use platewright_dsp::analysis::{OperatingPoint, SmallSignal, Tone, harmonics, steady_state};
+use platewright_dsp::analysis::{
+    NoLevel, OperatingPoint, SmallSignal, Tone, harmonics, level_for_output, steady_state,
+};
 use platewright_dsp::circuit::{Network, Node};
 use problems::{Known, known};
 use serde_json::Value;
@@ -139,4 +141,24 @@ fn every_trusted_harmonic_extrapolated() {
     println!("{seen} harmonics: {worst_db:.2e} dB, {worst_degrees:.2e} degrees, gain {worst_gain:.2e} dB");
     assert_eq!(seen, 118, "every trusted harmonic of the answers was compared");
     assert!(worst_gain < 1e-4, "gain {worst_gain} dB");
+}
+
+/// Every answer the other way round: the output that it states is reached at the input that it states.
+#[test]
+fn the_level_of_a_wanted_output() {
+    let mut worst = 0.0f64;
+    for Known { name, stage, answers } in known() {
+        let network = Network::of(&stage);
+        let full_scale = stage.source.full_scale;
+        for want in tones(&answers, -140.0) {
+            let level = level_for_output(&network, want.frequency, want.output_rms, full_scale).unwrap();
+            let miss = 20.0 * (level / want.input_rms).log10();
+            worst = worst.max(miss.abs());
+            // Where the stage clips, an input that is a little off hardly moves the output.
+            assert!(miss.abs() < 1e-3, "{name} {} Hz, {} V: {miss} dB", want.frequency, want.output_rms);
+        }
+        let beyond = 10.0 * stage.supply.voltage;
+        assert_eq!(level_for_output(&network, 1000.0, beyond, full_scale), Err(NoLevel::Never), "{name}");
+    }
+    println!("{worst:.2e} dB at worst");
 }

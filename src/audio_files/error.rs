@@ -21,6 +21,8 @@ pub enum AudioError {
     FolderIsFile { folder: PathBuf },
     /// An output's place is taken by a folder.
     OutputIsFolder { path: PathBuf },
+    /// An output is there already and may not be overwritten.
+    FileExists { path: PathBuf },
     /// An output would overwrite an input.
     OutputIsInput { path: PathBuf },
     /// Two outputs have one name.
@@ -119,6 +121,13 @@ impl fmt::Display for AudioError {
             }
             AudioError::OutputIsFolder { path } => {
                 write!(f, "{}: a folder stands where this file should be written; move it away", path.display())
+            }
+            AudioError::FileExists { path } => {
+                write!(
+                    f,
+                    "{}: the file exists already; choose another name, or overwrite it with --replace",
+                    path.display()
+                )
             }
             AudioError::OutputIsInput { path } => {
                 write!(f, "{}: this output would overwrite an input; choose another --into folder", path.display())

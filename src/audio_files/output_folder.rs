@@ -51,6 +51,26 @@ impl OutputPlan {
         Ok(OutputPlan { folder: folder.to_owned(), files: files.to_vec() })
     }
 
+    /// The same for one file of any place: one that exists is refused unless `replace` is set.
+    ///
+    /// # Errors
+    /// The file exists and `replace` is not set, is one of `inputs`, or a folder; its folder is a file.
+    pub fn check_file(file: &Path, replace: bool, inputs: &[PathBuf]) -> Result<(Self, PathBuf), AudioError> {
+        let Some(name) = file.file_name().map(PathBuf::from) else {
+            return Err(AudioError::OutputIsFolder { path: file.to_owned() });
+        };
+        let plan = Self::check(file.parent().unwrap_or(Path::new("")), true, &[name.clone()], inputs)?;
+        if !replace && file.symlink_metadata().is_ok() {
+            return Err(AudioError::FileExists { path: file.to_owned() });
+        }
+        Ok((plan, name))
+    }
+
+    /// Where the outputs will stand.
+    pub fn targets(&self) -> impl Iterator<Item = PathBuf> {
+        self.files.iter().map(|file| self.folder.join(file))
+    }
+
     /// Makes the folder, and folders within it that outputs need.
     ///
     /// # Errors

@@ -1,13 +1,15 @@
 //! `platewright compare`: all figures of every configuration, their sound, and the report.
 
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 
 use platewright_dsp::analysis::TonePair;
 
+use super::csv_file::CsvFile;
 use crate::audio_files::{OutputPlan, Recording};
 use crate::failure::{Failure, Outcome};
 use crate::figures::{Asked, AskedTone, Figures, gather};
 use crate::plan::{self, ComparePlan, LevelUnit};
+use crate::profile::Profile;
 use crate::rendering::{self, Job};
 use crate::stage_file::StageFile;
 use crate::{show, terminal};
@@ -28,13 +30,16 @@ const FREQUENCIES: [f64; 7] = [5.0, 20.0, 100.0, 1000.0, 10_000.0, 20_000.0, 100
 pub fn run(plan: &ComparePlan) -> Result<Outcome, Failure> {
     let file = super::stage(&plan.stage)?;
     let recordings = super::recordings(&plan.play)?;
-    let inputs: Vec<_> = plan.play.iter().chain([&plan.stage]).cloned().collect();
+    let profile = plan.profile.as_deref().map(Profile::load).transpose()?;
+    let inputs: Vec<_> = plan.play.iter().chain([&plan.stage]).chain(&plan.profile).cloned().collect();
     let comparison = Comparison {
         file: &file,
         recordings: &recordings,
         inputs: &inputs,
         extras: &[],
         into: &plan.into,
+        csv: plan.csv.as_deref(),
+        profile: profile.as_ref(),
         level: plan.level,
         trust: plan.trust,
         levels: plan.levels,
@@ -55,6 +60,10 @@ pub struct Comparison<'a> {
     pub extras: &'a [(&'a str, &'a [u8])],
     /// Where the results go.
     pub into: &'a plan::Into,
+    /// Where the figures go as CSV.
+    pub csv: Option<&'a Path>,
+    /// Harmonics that are wanted.
+    pub profile: Option<&'a Profile>,
     /// Level of the figures, V rms; none is a quarter of full scale.
     pub level: Option<f64>,
     /// Whether harmonics carry the spread of equally good tube fits.
@@ -76,6 +85,8 @@ impl Comparison<'_> {
         files.extend([REPORT, SUMMARY].map(PathBuf::from));
         files.extend(self.extras.iter().map(|(name, _)| PathBuf::from(name)));
         let outputs = OutputPlan::check(&self.into.folder, self.into.replace, &files, self.inputs)?;
+        let targets: Vec<PathBuf> = outputs.targets().collect();
+        let csv = CsvFile::check(self.csv, self.into.replace, self.inputs, &targets)?;
         let mut figures = gather(self.file, &self.asked()?)?;
 
         let folder = outputs.create()?;
@@ -87,6 +98,9 @@ impl Comparison<'_> {
         staged.push(folder.stage_contents(SUMMARY, self.summary_file(&figures, &tables).as_bytes())?);
         for (name, contents) in self.extras {
             staged.push(folder.stage_contents(name, contents)?);
+        }
+        if let Some(csv) = csv {
+            staged.push(csv.stage(&figures)?.1);
         }
         folder.commit(staged)?;
 
@@ -110,6 +124,7 @@ impl Comparison<'_> {
             imd: Some(vec![TonePair::Smpte, TonePair::Din, TonePair::Difference]),
             noise: true,
             headroom: true,
+            profile: self.profile.cloned(),
             play_peak: Some(super::true_peak(self.recordings)?),
             ..Asked::default()
         })

@@ -32,6 +32,8 @@ pub fn run(plan: &DemoPlan) -> Result<Outcome, Failure> {
         inputs: &[],
         extras: &[("stage.toml", STAGE.as_bytes()), (RECORDING_NAME, RECORDING)],
         into: &plan.into,
+        csv: None,
+        profile: None,
         level: None,
         trust: true,
         levels: LevelUnit::default(),

@@ -1,9 +1,11 @@
 //! `platewright measure`: figures of every configuration.
 
+use super::csv_file::CsvFile;
 use crate::cli::SweepKind;
 use crate::failure::{Failure, Outcome};
 use crate::figures::{Asked, AskedTone, gather};
 use crate::plan::MeasurePlan;
+use crate::profile::Profile;
 use crate::show;
 
 /// The tone that is shown when nothing is asked, Hz.
@@ -17,7 +19,14 @@ pub fn run(plan: &MeasurePlan) -> Result<Outcome, Failure> {
     let file = super::stage(&plan.stage)?;
     let recordings = super::recordings(&plan.play)?;
     let play_peak = if recordings.is_empty() { None } else { Some(super::true_peak(&recordings)?) };
-    let figures = gather(&file, &Asked { play_peak, ..asked(plan) })?;
+    let profile = plan.profile.as_deref().map(Profile::load).transpose()?;
+    let inputs: Vec<_> = plan.play.iter().chain([&plan.stage]).chain(&plan.profile).cloned().collect();
+    let csv = CsvFile::check(plan.csv.as_deref(), plan.replace, &inputs, &[])?;
+    let figures = gather(&file, &Asked { play_peak, profile, ..asked(plan) })?;
+    if let Some(csv) = csv {
+        let (folder, staged) = csv.stage(&figures)?;
+        folder.commit(vec![staged])?;
+    }
     super::print_figures(&figures, plan.figures.json, &show::measured(&figures.configurations, plan.levels))?;
     Ok(Outcome::of(plan.figures.strict, figures.warn()))
 }
@@ -30,6 +39,7 @@ fn asked(plan: &MeasurePlan) -> Asked {
     let nothing = tones.is_empty()
         && plan.frequencies.is_empty()
         && plan.imd.is_empty()
+        && plan.profile.is_none()
         && !(plan.noise || plan.headroom || level_sweep || frequency_sweep);
     // A person who asks for nothing wants to see something; a program that reads JSON wants what it asked for.
     if nothing && !plan.figures.json {

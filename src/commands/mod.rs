@@ -2,6 +2,7 @@
 
 mod bias;
 mod compare;
+mod csv_file;
 mod demo;
 mod measure;
 mod new;

@@ -89,11 +89,63 @@ pub struct NoiseFigures {
     /// 0 dBFS times that gain over the unweighted output noise.
     #[serde(rename = "signal_to_noise_dB")]
     pub signal_to_noise_db: Option<f64>,
+    /// What the supply's ripple leaves at `o`, V rms; where the stage file states a ripple.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub hum_rms: Option<f64>,
+    /// Hz.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub hum_frequency: Option<f64>,
+    /// 0 dBFS times the gain at 1 kHz over the hum.
+    #[serde(rename = "hum_below_full_scale_dB", skip_serializing_if = "Option::is_none", default)]
+    pub hum_below_full_scale_db: Option<f64>,
     /// THD+N of the first tone asked, noise unweighted.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub thd_n_percent: Option<f64>,
     /// What is left out.
     pub note: String,
+    /// Why a figure is `null`.
+    #[serde(skip_serializing_if = "Why::is_empty", default)]
+    pub why: Why,
+}
+
+/// How far a configuration misses the wanted harmonics.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct ProfileFigures {
+    /// Of the tone, Hz.
+    pub frequency: f64,
+    /// V rms at `in`: the profile's, or what gives its output level.
+    pub input_rms: Option<f64>,
+    /// V rms of the fundamental at `o`.
+    pub output_rms: Option<f64>,
+    /// √(Σ weight·miss² / Σ weight).
+    #[serde(rename = "distance_dB")]
+    pub distance_db: Option<f64>,
+    /// In rising order.
+    pub harmonics: Vec<ProfileHarmonicFigures>,
+    /// Why a figure is `null`.
+    #[serde(skip_serializing_if = "Why::is_empty", default)]
+    pub why: Why,
+}
+
+/// One harmonic of a profile.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct ProfileHarmonicFigures {
+    /// 2 is the octave.
+    pub order: u32,
+    /// wanted, at_most or at_least.
+    pub want: String,
+    /// That size, dBc.
+    pub wanted: f64,
+    /// What it may be off before it counts.
+    #[serde(rename = "within_dB")]
+    pub within_db: f64,
+    /// How much a miss counts.
+    pub weight: f64,
+    /// dBc.
+    pub got: Option<f64>,
+    /// What lies beyond the tolerance: positive where the harmonic is too large.
+    #[serde(rename = "miss_dB")]
+    pub miss_db: Option<f64>,
     /// Why a figure is `null`.
     #[serde(skip_serializing_if = "Why::is_empty", default)]
     pub why: Why,

@@ -6,9 +6,11 @@ use rayon::prelude::*;
 
 use super::tone::Trust;
 use super::{
-    ConfigurationFigures, Figures, SCHEMA, ToneFigures, headroom, imd, noise, point, sweep, tone, undecided,
+    ConfigurationFigures, Figures, SCHEMA, ToneFigures, headroom, imd, law, noise, point, profile, sweep, tone,
+    undecided,
 };
 use crate::failure::{Failure, WorkError};
+use crate::profile::Profile;
 use crate::stage_file::{Configuration, StageFile};
 
 /// What is asked beside the operating point.
@@ -32,6 +34,8 @@ pub struct Asked {
     pub noise: bool,
     /// Whether to look for the headroom.
     pub headroom: bool,
+    /// Harmonics that are wanted.
+    pub profile: Option<Profile>,
     /// True peak of the recordings played, as a part of full scale.
     pub play_peak: Option<f64>,
     /// Input resistance of a meter to hold to every node, Ω.
@@ -73,7 +77,10 @@ fn one(configuration: &Configuration, asked: &Asked) -> Result<ConfigurationFigu
     let level = |asked: Option<f64>| asked.unwrap_or(USUAL_LEVEL * full_scale);
     let members = if asked.trust { ensemble(&configuration.stage) } else { Vec::new() };
     let trust = if asked.trust { Trust::Ensemble(&members) } else { Trust::Off };
-    let tone = |t: &AskedTone| tone::tone(&network, &trust, t.frequency, level(t.level));
+    let tone = |t: &AskedTone| ToneFigures {
+        warnings: law::under_tone(&configuration.stage, &network, t.frequency, level(t.level)),
+        ..tone::tone(&network, &trust, t.frequency, level(t.level))
+    };
     let tones: Option<Vec<ToneFigures>> = asked.tones.as_ref().map(|t| t.par_iter().map(tone).collect());
     let pair = |&pair: &TonePair| imd::of(&network, pair, level(asked.level));
     let first_tone = tones.as_ref().and_then(|t| t.first());
@@ -86,8 +93,9 @@ fn one(configuration: &Configuration, asked: &Asked) -> Result<ConfigurationFigu
             .frequency_sweep
             .then(|| sweep::over_frequency(&network, &at_rest, level(asked.level))),
         imd: asked.imd.as_ref().map(|pairs| pairs.par_iter().map(pair).collect()),
-        noise: asked.noise.then(|| noise::of(&network, &at_rest, full_scale, first_tone)),
+        noise: asked.noise.then(|| noise::of(&configuration.stage, &network, &at_rest, first_tone)),
         headroom: asked.headroom.then(|| headroom::of(&network, &at_rest, full_scale, asked.play_peak)),
+        profile: asked.profile.as_ref().map(|wanted| profile::of(&network, wanted, full_scale)),
         tones,
     })
 }

@@ -3,11 +3,14 @@
 //! A figure that cannot be had is `null`, and the object's `why` maps its key to the reason.
 
 mod bench;
+mod csv;
 mod gather;
 mod headroom;
 mod imd;
+mod law;
 mod noise;
 mod point;
+mod profile;
 mod sweep;
 mod tone;
 mod undecided;
@@ -59,7 +62,7 @@ impl Figures {
 
     /// Whether anything calls for a warning.
     pub fn warn(&self) -> bool {
-        self.configurations.iter().any(|c| !c.operating_point.warnings.is_empty())
+        self.configurations.iter().any(|c| c.warnings().next().is_some())
     }
 }
 
@@ -106,6 +109,16 @@ pub struct ConfigurationFigures {
     /// Headroom, when asked.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub headroom: Option<HeadroomFigures>,
+    /// A target profile's misses, when asked.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub profile: Option<ProfileFigures>,
+}
+
+impl ConfigurationFigures {
+    /// Warnings at rest, then those of the tones.
+    pub fn warnings(&self) -> impl Iterator<Item = &WarningFigures> {
+        self.operating_point.warnings.iter().chain(self.tones.iter().flatten().flat_map(|tone| &tone.warnings))
+    }
 }
 
 /// The stage at rest.
@@ -276,6 +289,9 @@ pub struct ToneFigures {
     pub thd_orders: u32,
     /// From the second.
     pub harmonics: Vec<HarmonicFigures>,
+    /// Published laws that the tone takes beyond what they were made for.
+    #[serde(skip_serializing_if = "Vec::is_empty", default)]
+    pub warnings: Vec<WarningFigures>,
     /// Why a figure is `null`.
     #[serde(skip_serializing_if = "Why::is_empty", default)]
     pub why: Why,

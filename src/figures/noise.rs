@@ -1,7 +1,7 @@
 //! Noise.
 
-use platewright_dsp::analysis::{Noise, OperatingPoint, SmallSignal};
-use platewright_dsp::circuit::Network;
+use platewright_dsp::analysis::{Noise, OperatingPoint, SmallSignal, supply_transfer};
+use platewright_dsp::circuit::{Network, Ripple, Stage};
 use platewright_dsp::portable::{decibels, magnitude};
 
 use super::{NoiseFigures, ToneFigures, Why};
@@ -9,8 +9,9 @@ use super::{NoiseFigures, ToneFigures, Why};
 /// What the figures leave out.
 const NOTE: &str = "best case: thermal noise at 300 K and 2.5/gm a triode; without flicker and grid noise";
 
-/// The noise of a network whose source reaches `full_scale` V rms, and the THD+N of `tone` where there is one.
-pub fn of(network: &Network, point: &OperatingPoint, full_scale: f64, tone: Option<&ToneFigures>) -> NoiseFigures {
+/// The noise of `stage`, which is `network`, the hum of its supply, and the THD+N of `tone` where there is one.
+pub fn of(stage: &Stage, network: &Network, point: &OperatingPoint, tone: Option<&ToneFigures>) -> NoiseFigures {
+    let full_scale = stage.source.full_scale;
     let small = SmallSignal::new(network, point);
     let noise = Noise::of(&small);
     let gain = small.at(1000.0).map(|r| magnitude(r.gain)).filter(|&gain| gain > 0.0);
@@ -27,16 +28,33 @@ pub fn of(network: &Network, point: &OperatingPoint, full_scale: f64, tone: Opti
                 .map(|key| (key.to_owned(), "nothing reaches the output".to_owned())),
         );
     }
+    let ripple = stage.supply.ripple;
+    let hum = ripple.and_then(|ripple| hum(&small, ripple));
+    if ripple.is_some() && hum.is_none() {
+        why.insert("hum_rms".to_owned(), "the network has no solution at the ripple's frequency".to_owned());
+    }
     let both = noise.zip(gain);
     NoiseFigures {
         output_rms: noise.map(|n| n.output_rms),
         output_rms_a: noise.map(|n| n.output_rms_a),
         input_rms: both.map(|(n, gain)| n.output_rms / gain),
         signal_to_noise_db: both.map(|(n, gain)| decibels(full_scale * gain / n.output_rms)),
+        hum_rms: hum,
+        hum_frequency: ripple.map(|ripple| ripple.frequency),
+        // Hum of 0 V is below full scale by no number of decibels.
+        hum_below_full_scale_db: hum
+            .zip(gain)
+            .filter(|&(hum, _)| hum > 0.0)
+            .map(|(hum, gain)| decibels(full_scale * gain / hum)),
         thd_n_percent: tone.zip(noise).and_then(|(tone, noise)| thd_n(tone, noise)),
         note: NOTE.to_owned(),
         why,
     }
+}
+
+/// What the ripple leaves at the output, V rms.
+fn hum(small: &SmallSignal<'_>, ripple: Ripple) -> Option<f64> {
+    Some(ripple.rms * magnitude(supply_transfer(small, ripple.frequency)?))
 }
 
 /// THD+N = √(ΣH² + noise²)/H1.

@@ -3,10 +3,10 @@
 use std::collections::BTreeMap;
 
 use platewright_dsp::analysis::{
-    Meter, OperatingPoint, TubePoint, TubeStress, cold_volts, tube_stresses, tube_type,
+    BeyondLaw, Meter, OperatingPoint, TubePoint, TubeStress, beyond_law_at_rest, cold_volts, tube_stresses,
+    tube_type,
 };
 use platewright_dsp::circuit::{Network, Node, Role, Stage};
-use platewright_dsp::triode::Law;
 
 use super::{
     MeterFigures, OperatingPointFigures, PartFigures, RatingFigures, ReadingFigures, TubeFigures, WarningFigures,
@@ -17,8 +17,6 @@ use crate::stage_file::{Configuration, PartRating};
 /// Part of a limit beyond which it is exceeded, %. A published typical operation may stand exactly at a limit; rounding
 /// in its figures is not an excess.
 const EXCEEDED_PERCENT: f64 = 100.05;
-/// Plate-to-cathode volts below which the two published laws are used beyond what they were made for.
-const PUBLISHED_LAW_VOLTS: f64 = 10.0;
 /// A meter that moves a node by more than this part of its voltage, and by more than a tenth of a volt, misleads.
 const METER_DISTURBS: f64 = 0.01;
 
@@ -132,7 +130,7 @@ fn part_rating(part: &str, limit: &str, unit: &str, asked: f64, allowed: f64) ->
 fn warnings(stage: &Stage, point: &OperatingPoint, ratings: &[RatingFigures]) -> Vec<WarningFigures> {
     let mut exceeded: Vec<WarningFigures> = ratings.iter().filter_map(exceeded).collect();
     exceeded.sort_by(|a, b| b.used_percent.unwrap_or(0.0).total_cmp(&a.used_percent.unwrap_or(0.0)));
-    exceeded.extend(point.tubes.iter().filter_map(|tube| beyond_law(stage, tube)));
+    exceeded.extend(beyond_law_at_rest(stage, point).iter().map(beyond_law));
     exceeded
 }
 
@@ -161,20 +159,15 @@ fn with_unit(value: f64, unit: &str) -> String {
     }
 }
 
-fn beyond_law(stage: &Stage, tube: &TubePoint) -> Option<WarningFigures> {
-    let kind = tube_type(stage, tube.role)?;
-    let published = !matches!(kind.section.law, Law::TwoSection(_) | Law::ThreeSection(_));
-    (published && tube.vpk < PUBLISHED_LAW_VOLTS).then(|| WarningFigures {
-        part: tube.role.name().to_owned(),
+/// The warning of a law used beyond its reach.
+fn beyond_law(beyond: &BeyondLaw) -> WarningFigures {
+    let part = beyond.role.name();
+    WarningFigures {
+        part: part.to_owned(),
         limit: "law".to_owned(),
         used_percent: None,
-        text: format!(
-            "{}: {:.1} V plate to cathode; the law of {} was made for {PUBLISHED_LAW_VOLTS:.0} V and more",
-            tube.role.name(),
-            tube.vpk,
-            kind.name
-        ),
-    })
+        text: format!("{part}: {beyond}"),
+    }
 }
 
 /// Nodes that a builder can reach with a probe.

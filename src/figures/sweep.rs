@@ -47,15 +47,21 @@ fn at_level(input_rms: f64, cycle: Option<Cycle>) -> LevelFigures {
         let part = magnitude(cycle.harmonics[order - 1]) / magnitude(cycle.harmonics[0]);
         (part > 0.0).then(|| decibels(part)).filter(|&dbc| dbc > TRUSTED_DBC)
     };
+    let harmonics_dbc: Vec<Option<f64>> = (2..=HIGHEST).map(dbc).collect();
+    let mut why = Why::new();
+    if harmonics_dbc.contains(&None) {
+        let reason = format!("below {TRUSTED_DBC} dBc: not told apart from the arithmetic");
+        why.insert("harmonics_dBc".to_owned(), reason);
+    }
     LevelFigures {
         input_rms,
         output_rms: Some(cycle.output_rms()),
         gain_db: Some(decibels(cycle.gain())),
         thd_percent: Some(100.0 * cycle.thd()),
-        harmonics_dbc: (2..=HIGHEST).map(dbc).collect(),
+        harmonics_dbc,
         least_plate_volts: cycle.tubes.iter().map(|t| t.least_plate_volts).collect(),
         peak_plate_volts: cycle.tubes.iter().map(|t| t.peak_plate_volts).collect(),
-        why: Why::new(),
+        why,
     }
 }
 

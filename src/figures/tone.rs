@@ -9,6 +9,9 @@ use super::{HarmonicFigures, ResponseFigures, ToneFigures, Why};
 /// Harmonics measured and summed.
 pub const ORDERS: usize = 10;
 
+/// Why a harmonic is not shown.
+pub const NOT_TRUSTED: &str = "below -220 dBc, or it did not settle as the steps were made finer: not trusted";
+
 /// How far the tube data carry a harmonic.
 pub enum Trust<'a> {
     /// Nobody wants to know.
@@ -56,6 +59,7 @@ fn measured(tone: &Tone) -> ToneFigures {
         thd_percent: tone.thd_f().map(|thd| 100.0 * thd),
         thd_r_percent: tone.thd_r().map(|thd| 100.0 * thd),
         thd_orders: ORDERS as u32,
+        warnings: Vec::new(),
         harmonics: (2..=ORDERS).map(|order| harmonic(tone, order)).collect(),
         why: Why::new(),
     };
@@ -72,8 +76,7 @@ fn harmonic(tone: &Tone, order: usize) -> HarmonicFigures {
     let (dbc, phase_deg) = (tone.dbc(order), tone.relative_phase(order));
     let mut why = Why::new();
     if dbc.is_none() {
-        let reason = "below -220 dBc, or it did not settle as the steps were made finer: not trusted";
-        why.extend(["dBc", "phase_deg"].map(|key| (key.to_owned(), reason.to_owned())));
+        why.extend(["dBc", "phase_deg"].map(|key| (key.to_owned(), NOT_TRUSTED.to_owned())));
     }
     HarmonicFigures { order: order as u32, dbc, phase_deg, trust_db: None, fits_dbc: Vec::new(), why }
 }
@@ -95,6 +98,7 @@ fn silent(frequency: f64, input_rms: f64, reason: &str) -> ToneFigures {
         thd_percent: None,
         thd_r_percent: None,
         thd_orders: ORDERS as u32,
+        warnings: Vec::new(),
         harmonics: (2..=ORDERS).map(none).collect(),
         why: Why::new(),
     };

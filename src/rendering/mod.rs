@@ -1,5 +1,6 @@
 //! Recordings through every configuration into WAV files at one level.
 
+mod estimate;
 mod lanes;
 mod level;
 mod names;
@@ -18,6 +19,7 @@ use crate::failure::{Failure, RequestError, WorkError};
 use crate::plan::Sound;
 use crate::stage_file::Configuration;
 
+pub use estimate::Estimate;
 use level::Level;
 use passage::Passage;
 pub use progress::Progress;
@@ -67,6 +69,9 @@ pub struct RenderFigures {
     pub newton_per_step: f64,
     /// Steps whose root stayed above its tolerance.
     pub unresolved_steps: u64,
+    /// For a sine that peaks where the recording does.
+    #[serde(flatten)]
+    pub estimate: Estimate,
 }
 
 impl<'a> Job<'a> {
@@ -154,7 +159,31 @@ pub fn warnings(figures: &[RenderFigures]) -> Vec<String> {
         .iter()
         .filter(|f| f.unresolved_steps > 0)
         .map(|f| format!("{}: at {} steps the tubes' equations were not met to 1 µV", f.file, f.unresolved_steps));
-    over.chain(unresolved).collect()
+    let beyond = figures.iter().flat_map(|f| {
+        f.estimate.beyond_law.iter().map(|law| format!("{}: {law} (1 kHz at the recording's peak)", f.file))
+    });
+    over.chain(unresolved).chain(beyond).collect()
+}
+
+/// Alias products above this are worth another oversampling, dBc.
+const ALIASES_HEARD: f64 = -80.0;
+
+/// The worst alias estimate of every recording, in words.
+pub fn alias_lines(figures: &[RenderFigures]) -> Vec<String> {
+    let line = |of_recording: &[RenderFigures]| {
+        let dbc = |f: &&RenderFigures| f.estimate.alias_dbc.unwrap_or(f64::NEG_INFINITY);
+        let worst = of_recording.iter().max_by(|a, b| dbc(a).total_cmp(&dbc(b)))?;
+        let (tone, recording) = (worst.estimate.alias_tone / 1000.0, &worst.recording);
+        let found = match (worst.estimate.alias_dbc, worst.estimate.why.get("alias_dBc")) {
+            (Some(estimate), _) => format!("{estimate:.0} dBc at worst, in {}", worst.configuration),
+            (None, reason) => reason.cloned().unwrap_or_default(),
+        };
+        let heard = worst.estimate.alias_dbc.is_some_and(|dbc| dbc > ALIASES_HEARD) && worst.oversampling < 64;
+        let more =
+            if heard { format!("; --oversample {} brings less", 2 * worst.oversampling) } else { String::new() };
+        Some(format!("alias estimate for a {tone} kHz tone at the peak of {recording}: {found}{more}"))
+    };
+    figures.chunk_by(|a, b| a.recording == b.recording).filter_map(line).collect()
 }
 
 /// The level that all files share, in words.

@@ -3,13 +3,13 @@
 use std::path::PathBuf;
 
 use platewright_dsp::Kernel;
-use platewright_dsp::portable::decibels;
+use platewright_dsp::portable::{decibels, ratio};
 use platewright_dsp::signal::{Oversampling, Resampler, TriangularDither};
 
 use super::lanes::Lanes;
 use super::level::Level;
 use super::progress::Progress;
-use super::{Job, RenderFigures, names};
+use super::{Estimate, Job, RenderFigures, names};
 use crate::audio_files::{OutputFolder, Recording, SampleFormat, Scratch, StagedFile, WavOutput};
 use crate::cli;
 use crate::failure::{Failure, RequestError};
@@ -36,6 +36,8 @@ pub struct Passage<'a> {
 pub struct Passed<'a> {
     passage: Passage<'a>,
     sinks: Vec<Sink>,
+    /// The recording's largest sample, 1.0 being full scale.
+    input_peak: f64,
 }
 
 /// Where a configuration's volts go.
@@ -138,9 +140,11 @@ impl<'a> Passage<'a> {
         let mut input = vec![Vec::new(); channels];
         let mut output = vec![vec![Vec::new(); channels]; self.configurations.len()];
         let (mut late, mut left) = (self.lanes.latency(), self.frames());
+        let mut input_peak = 0.0_f64;
         while left > 0 {
             let mut frames = blocks.read(&mut input, BLOCK)?;
             progress.add((frames * channels * self.configurations.len()) as u64);
+            input_peak = input.iter().flatten().fold(input_peak, |peak, sample| peak.max(sample.abs()));
             if frames == 0 {
                 frames = BLOCK.min(usize::try_from(left).unwrap_or(BLOCK) + late);
                 input.iter_mut().for_each(|channel| {
@@ -164,7 +168,7 @@ impl<'a> Passage<'a> {
         for sink in &mut sinks {
             sink.end()?;
         }
-        Ok(Passed { passage: self, sinks })
+        Ok(Passed { passage: self, sinks, input_peak })
     }
 }
 
@@ -236,7 +240,7 @@ impl Passed<'_> {
         folder: &OutputFolder,
         hand_over: &mut dyn FnMut(StagedFile, RenderFigures),
     ) -> Result<(), Failure> {
-        let Passed { passage, sinks } = self;
+        let Passed { passage, sinks, input_peak } = self;
         let channels = passage.recording.channels();
         for (configuration, sink) in sinks.into_iter().enumerate() {
             let scale = level.samples_per_volt(configuration, peak);
@@ -253,23 +257,35 @@ impl Passed<'_> {
                 }
             };
             let (staged, levels) = file.wav.finish()?;
-            let frames = passage.file_frames()?;
-            let figures = passage.figures(configuration, frames, scale, sink.peak_volts, levels.over_full_scale);
-            hand_over(staged, figures);
+            let written = Written {
+                frames: passage.file_frames()?,
+                scale,
+                peak_volts: sink.peak_volts,
+                over_full_scale: levels.over_full_scale,
+                input_peak,
+            };
+            hand_over(staged, passage.figures(configuration, &written));
         }
         Ok(())
     }
 }
 
+/// What a finished file knows of itself.
+struct Written {
+    frames: u64,
+    /// Samples a volt.
+    scale: f64,
+    peak_volts: f64,
+    over_full_scale: u64,
+    /// The recording's largest sample.
+    input_peak: f64,
+}
+
 impl Passage<'_> {
-    fn figures(
-        &self,
-        configuration: usize,
-        frames: u64,
-        scale: f64,
-        peak_volts: f64,
-        over_full_scale: u64,
-    ) -> RenderFigures {
+    fn figures(&self, configuration: usize, written: &Written) -> RenderFigures {
+        let stage = &self.configurations[configuration].stage;
+        let (sample_rate, times) = (self.recording.sample_rate(), self.oversampling.factor());
+        let input_rms = written.input_peak * ratio(self.sound.drive) * stage.source.full_scale;
         let counts = self.lanes.counts(configuration);
         let channels = self.recording.channels();
         let steps =
@@ -282,15 +298,16 @@ impl Passage<'_> {
             file: names::shown(&self.files[configuration]),
             sample_rate: self.sample_rate(),
             channels,
-            frames,
+            frames: written.frames,
             format: format!("{:?}", self.sound.format).to_lowercase(),
-            oversampling: self.oversampling.factor(),
-            full_scale_rms: 1.0 / (scale * std::f64::consts::SQRT_2),
-            peak_volts,
-            peak_dbfs: (peak_volts > 0.0).then(|| decibels(peak_volts * scale)),
-            over_full_scale,
+            oversampling: times,
+            full_scale_rms: 1.0 / (written.scale * std::f64::consts::SQRT_2),
+            peak_volts: written.peak_volts,
+            peak_dbfs: (written.peak_volts > 0.0).then(|| decibels(written.peak_volts * written.scale)),
+            over_full_scale: written.over_full_scale,
             newton_per_step: counts.newton as f64 / steps,
             unresolved_steps: counts.unresolved,
+            estimate: Estimate::of(stage, sample_rate, times, input_rms),
         }
     }
 }

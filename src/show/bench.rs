@@ -37,9 +37,14 @@ pub fn noise(configurations: &[ConfigurationFigures]) -> Option<SideBySide> {
     row("output, A", &|n| n.output_rms_a.map(units::volts));
     row("at the input", &|n| n.input_rms.map(units::volts));
     row("signal to noise", &|n| n.signal_to_noise_db.map(|db| format!("{db:.1} dB")));
-    if configurations.iter().any(|c| c.noise.as_ref().is_some_and(|n| n.thd_n_percent.is_some())) {
-        row("THD+N", &|n| n.thd_n_percent.map(units::percent));
-    }
+    let mut optional = |label: &str, figure: &dyn Fn(&NoiseFigures) -> Option<String>| {
+        let of = |c: &ConfigurationFigures| c.noise.as_ref().and_then(figure);
+        table.row(label, configurations.iter().map(of));
+    };
+    optional("THD+N", &|n| n.thd_n_percent.map(units::percent));
+    optional("hum", &|n| n.hum_rms.map(units::volts));
+    optional("  at", &|n| n.hum_frequency.map(units::hertz));
+    optional("  below 0 dBFS", &|n| n.hum_below_full_scale_db.map(|db| format!("{db:.1} dB")));
     Some(table)
 }
 

@@ -3,6 +3,7 @@
 mod bench;
 mod bench_sheet;
 mod figures;
+mod profile;
 mod renders;
 mod side_by_side;
 mod spectrum;
@@ -32,6 +33,7 @@ Local codes and the judgement of a licensed practitioner come before this sheet.
 /// A table for everything that was measured, and bars of the harmonics.
 pub fn measured(configurations: &[ConfigurationFigures], unit: LevelUnit) -> Vec<String> {
     let tables = [
+        profile::profile(configurations, unit),
         figures::tones(configurations, unit),
         bench::intermodulation(configurations, unit),
         bench::headroom(configurations, unit),

@@ -1,7 +1,7 @@
 //! Rendered files as a list.
 
 use super::units;
-use crate::rendering::{RenderFigures, level_line};
+use crate::rendering::{RenderFigures, alias_lines, level_line};
 use crate::terminal::plain;
 
 /// One line a file, and the level that they share.
@@ -19,6 +19,9 @@ pub fn renders(figures: &[RenderFigures]) -> String {
     }
     if let Some(line) = level_line(figures) {
         out.push_str(&format!("{line}\n"));
+    }
+    for line in alias_lines(figures) {
+        out.push_str(&format!("{}\n", plain(&line)));
     }
     out
 }

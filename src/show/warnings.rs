@@ -7,7 +7,7 @@ use crate::terminal::plain;
 pub fn warnings(configurations: &[ConfigurationFigures], colour: bool) -> String {
     let mut seen: Vec<(&WarningFigures, Vec<&str>)> = Vec::new();
     for configuration in configurations {
-        for warning in &configuration.operating_point.warnings {
+        for warning in configuration.warnings() {
             match seen.iter_mut().find(|(other, _)| other.text == warning.text) {
                 Some((_, names)) => names.push(&configuration.name),
                 None => seen.push((warning, vec![&configuration.name])),

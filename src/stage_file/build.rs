@@ -4,7 +4,7 @@ use std::collections::BTreeMap;
 use std::sync::Arc;
 
 use platewright_dsp::circuit::{
-    Bypass, Coupling, Follower, Gain, Input, LeakReturn, Output, Pot, Source, Stage, Supply, Taper,
+    Bypass, Coupling, Follower, Gain, Input, LeakReturn, Output, Pot, Ripple, Source, Stage, Supply, Taper,
 };
 use platewright_dsp::triode::TubeType;
 
@@ -74,7 +74,16 @@ impl Builder<'_> {
         let voltage = self.required("supply.voltage");
         let resistance = self.required("supply.resistance");
         let reservoir = self.required("supply.reservoir");
-        Supply { voltage, resistance, reservoir }
+        Supply { voltage, resistance, reservoir, ripple: self.ripple() }
+    }
+
+    /// The ripple where it is stated: its size and its frequency together.
+    fn ripple(&mut self) -> Option<Ripple> {
+        let stated = ["supply.ripple_rms", "supply.ripple_frequency"].iter().any(|path| self.has(path));
+        stated.then(|| Ripple {
+            rms: self.required("supply.ripple_rms"),
+            frequency: self.required("supply.ripple_frequency"),
+        })
     }
 
     fn source(&mut self) -> Source {

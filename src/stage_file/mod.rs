@@ -1,6 +1,6 @@
 //! The stage file: TOML text in, a checked stage for every configuration out.
 //!
-//! The text becomes a tree whose keys and values know their place ([`tree`]); one table of keys ([`schema`]) says what
+//! The text becomes a tree whose keys and values know their place ([`crate::spanned`]); one table of keys ([`schema`]) says what
 //! may stand where; the changes of `[compare]` and `[[configuration]]` are applied to the tree ([`overrides`]), so that
 //! a value of theirs that is wrong is shown where it was written; and each configuration is then checked as a whole
 //! ([`build`]).
@@ -11,30 +11,30 @@ mod compare;
 mod keys;
 mod names;
 mod overrides;
-mod problem;
-mod quantity;
-mod read;
 mod schema;
 mod sets;
-mod tree;
 mod tubes;
-mod value;
 
 use std::collections::BTreeMap;
 use std::path::Path;
 
 use platewright_dsp::circuit::Stage;
-use toml::de::DeTable;
 
 pub use build::PartRating;
 pub use names::file_stems;
-pub use problem::Diagnosis;
 pub use tubes::Library;
 
 use crate::failure::{Failure, RequestError};
-use problem::Problem;
+use crate::spanned::{self, FileKind, problem, quantity, read, tree, value};
+use problem::{Diagnosis, Problem};
 use tree::{Node, Table};
 use tubes::Tubes;
+
+const KIND: FileKind = FileKind {
+    name: "stage file",
+    start: "`platewright new stage.toml` writes a commented example to start from",
+    mistaken: "check the name: was a recording meant, which goes after --play?",
+};
 
 /// A stage file that has been read and checked.
 #[derive(Clone, Debug)]
@@ -73,7 +73,7 @@ impl StageFile {
     /// # Errors
     /// [`RequestError`] where it cannot be read or anything in it is wrong.
     pub fn load(path: &Path, library: &Library<'_>) -> Result<Self, Failure> {
-        let text = read::text(path)?;
+        let text = read::text(&KIND, path)?;
         Self::parse(&path.to_string_lossy(), text, library)
     }
 
@@ -83,16 +83,16 @@ impl StageFile {
     /// [`RequestError`] where the text is empty or anything in it is wrong; many problems at once where they do not
     /// follow from each other.
     pub fn parse(name: &str, text: String, library: &Library<'_>) -> Result<Self, Failure> {
-        read::refuse_empty(name, &text)?;
+        read::refuse_empty(&KIND, name, &text)?;
         match check(&text, library) {
             Ok(checked) => Ok(Self { text, ..checked }),
-            Err(problems) => Err(RequestError::StageFile(Box::new(Diagnosis::new(name, &text, problems))).into()),
+            Err(problems) => Err(RequestError::File(Box::new(Diagnosis::new(name, &text, problems))).into()),
         }
     }
 }
 
 fn check(text: &str, library: &Library<'_>) -> Result<StageFile, Vec<Problem>> {
-    let root = parse_tree(text)?;
+    let root = spanned::parse(&KIND, text).map_err(|problem| vec![problem])?;
     let end = text.trim_end().len();
     let mut problems = Vec::new();
     let mut notes = Vec::new();
@@ -133,19 +133,6 @@ fn check(text: &str, library: &Library<'_>) -> Result<StageFile, Vec<Problem>> {
         .collect();
     let title = root.get("title").and_then(Node::as_text).map(str::to_owned);
     Ok(StageFile { title, text: String::new(), configurations, notes })
-}
-
-fn parse_tree(text: &str) -> Result<Table, Vec<Problem>> {
-    match DeTable::parse(text) {
-        Ok(parsed) => Ok(Table::from_toml(parsed.get_ref())),
-        Err(error) => {
-            let span = error.span().unwrap_or(text.len()..text.len());
-            let remedy = "a stage file is TOML: [table] lines, and below them one key = value on a line, texts between \
-                          quotation marks";
-            let title = format!("this is not TOML: {}", error.message());
-            Err(vec![Problem::new(&span, title, "the reading stops here", remedy)])
-        }
-    }
 }
 
 fn check_head(root: &Table, problems: &mut Vec<Problem>) {

@@ -3,8 +3,8 @@
 //! Unknown keys, keys whose time has not come, overrides and values are all checked against it.
 
 use super::quantity::{
-    self as q, CAPACITOR, CURRENT, ELECTRODES, FORMAT, FRACTION, OR_WIRE, POWER, Quantity, RESISTOR, TOLERANCE,
-    VOLTAGE,
+    self as q, CAPACITOR, CURRENT, ELECTRODES, FORMAT, FRACTION, FREQUENCY, OR_WIRE, POWER, Quantity, RESISTOR,
+    TOLERANCE, VOLTAGE,
 };
 
 /// One key.
@@ -89,8 +89,8 @@ pub const KEYS: &[Key] = &[
     later("supply.cold_voltage", "supply voltage while the tubes are cold"),
     later("supply.shared_by", "channels fed through the same resistance"),
     later("supply.other_current", "what else draws current from node B"),
-    later("supply.ripple_rms", "ripple on the supply, V rms"),
-    later("supply.ripple_frequency", "frequency of the ripple"),
+    now("supply.ripple_rms", Kind::Number(VOLTAGE), "ripple on the supply voltage, V rms"),
+    now("supply.ripple_frequency", Kind::Number(FREQUENCY), "frequency of the ripple"),
     later("supply.gain_decoupling", "the gain tube's own decoupled node"),
     later("heater", "the heater supply"),
     now("source", Kind::Table, "what drives the stage"),

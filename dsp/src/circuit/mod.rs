@@ -5,4 +5,6 @@ pub(crate) mod nodal;
 mod stage;
 
 pub use network::{Drive, LOAD_KEYS, Network, Node, Part, ResistiveSource, Role, Terminal, TriodePlace};
-pub use stage::{Bypass, Coupling, Follower, Gain, Input, LeakReturn, Output, Pot, Source, Stage, Supply, Taper};
+pub use stage::{
+    Bypass, Coupling, Follower, Gain, Input, LeakReturn, Output, Pot, Ripple, Source, Stage, Supply, Taper,
+};

@@ -30,6 +30,17 @@ pub struct Supply {
     pub resistance: f64,
     /// Reservoir from node B to ground, F.
     pub reservoir: f64,
+    /// Ripple on the supply voltage, where it is stated.
+    pub ripple: Option<Ripple>,
+}
+
+/// Ripple on the supply voltage, ahead of the supply's resistance: a sine.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Ripple {
+    /// V rms.
+    pub rms: f64,
+    /// Hz: twice that of the mains behind a full-wave rectifier.
+    pub frequency: f64,
 }
 
 /// The source.

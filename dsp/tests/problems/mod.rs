@@ -55,7 +55,7 @@ pub fn medium_mu() -> Arc<TubeType> {
 /// A capacitor-coupled stage with a follower and a bypass that can be switched out.
 pub fn two_tube_stage(engaged: bool) -> Stage {
     Stage {
-        supply: Supply { voltage: 290.0, resistance: 2700.0, reservoir: 39e-6 },
+        supply: Supply { voltage: 290.0, resistance: 2700.0, reservoir: 39e-6, ripple: None },
         source: Source { resistance: 330.0, full_scale: 2.0 },
         input: Input {
             pot: Some(Pot { resistance: 47e3, position: 0.45, taper: Taper::Linear }),
@@ -295,7 +295,7 @@ impl File {
         };
         let (s, o, g) = (&self.supply, &self.output, &self.gain);
         Stage {
-            supply: Supply { voltage: s.voltage, resistance: s.resistance, reservoir: s.reservoir },
+            supply: Supply { voltage: s.voltage, resistance: s.resistance, reservoir: s.reservoir, ripple: None },
             source: Source { resistance: self.source.resistance, full_scale: self.source.full_scale },
             input: Input {
                 pot: self.input.pot.as_ref().map(|p| Pot {

@@ -124,7 +124,7 @@ fn override_rules() {
         ("[compare]\n\"output.load\" = [\"47k\"]", "\"output.load\" is a table, not a value"),
         ("[compare]\n\"plate_resistor\" = [1]", "did you mean `gain.plate_resistor`?"),
         ("[compare]\n\"gain.plate_load.current\" = [1]", "`gain.plate_load.current` is not available yet"),
-        ("[compare]\n\"supply.ripple_rms\" = [1]", "`supply.ripple_rms` is not available yet"),
+        ("[compare]\n\"supply.cold_voltage\" = [1]", "`supply.cold_voltage` is not available yet"),
         (
             "[compare]\n\"gain.cathode_resistor\" = [{ value = 1, wats = 2 }]",
             "unknown key `gain.cathode_resistor.wats`",

@@ -1,4 +1,4 @@
-//! Problems of a stage file, each with its place, and how a person sees them.
+//! Problems of a file, each with its place, and how a person sees them.
 
 use std::collections::HashSet;
 
@@ -64,7 +64,7 @@ impl Problem {
     }
 }
 
-/// Everything found wrong in one stage file.
+/// Everything found wrong in one file.
 #[derive(Debug)]
 pub struct Diagnosis {
     name: String,

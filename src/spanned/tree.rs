@@ -4,7 +4,7 @@ use std::ops::Range;
 
 use toml::de::{DeArray, DeFloat, DeInteger, DeTable, DeValue};
 
-/// Bytes of the stage file's text.
+/// Bytes of the file's text.
 pub type Span = Range<usize>;
 
 /// A value and its place.
@@ -16,7 +16,7 @@ pub struct Node {
     pub value: Value,
 }
 
-/// A TOML value as far as a stage file needs it.
+/// A TOML value as far as these files need it.
 #[derive(Clone, Debug)]
 pub enum Value {
     /// A string.

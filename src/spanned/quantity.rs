@@ -2,7 +2,7 @@
 
 use crate::iec60062::{self, Letters};
 
-/// A kind of value with the range that a stage can mean. The ranges are wide: they are there to catch a farad where a
+/// A kind of value with the range that a file can mean. The ranges are wide: they are there to catch a farad where a
 /// microfarad was meant, not to judge a design.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Quantity {
@@ -20,7 +20,14 @@ pub struct Quantity {
     pub example: &'static str,
 }
 
-const fn quantity(name: &'static str, unit: &'static str, low: f64, high: f64, example: &'static str) -> Quantity {
+/// A quantity with its range.
+pub const fn quantity(
+    name: &'static str,
+    unit: &'static str,
+    low: f64,
+    high: f64,
+    example: &'static str,
+) -> Quantity {
     Quantity { name, unit, low, high, zero: false, example }
 }
 
@@ -40,6 +47,8 @@ pub const ELECTRODES: Quantity = or_zero(quantity("capacitance", "F", 1e-18, 1e-
 pub const VOLTAGE: Quantity = quantity("voltage", "V", 1e-6, 1e5, "290");
 /// A current.
 pub const CURRENT: Quantity = quantity("current", "A", 1e-9, 1e3, "\"20m\"");
+/// A frequency.
+pub const FREQUENCY: Quantity = quantity("frequency", "Hz", 1e-3, 1e7, "100");
 /// A power.
 pub const POWER: Quantity = quantity("power", "W", 1e-6, 1e5, "2");
 /// A part's tolerance as a fraction.

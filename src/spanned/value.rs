@@ -1,4 +1,4 @@
-//! One value of the tree as the kind that the schema asks for.
+//! One value of the tree as the kind that is wanted.
 
 use super::problem::Problem;
 use super::quantity::{OR_WIRE, Quantity, RESISTOR};
