@@ -1,8 +1,12 @@
 //! The arguments alone: what may be written on the command line, and the help that explains it.
 
+mod listen;
+
 use std::path::PathBuf;
 
 use clap::{Args, Parser, Subcommand, ValueEnum};
+
+pub use listen::{ListenCommand, PackArguments, TallyArguments, TrialArguments};
 
 /// Bench figures, rendered sound and honest comparisons of triode line stages, before they are built.
 #[derive(Debug, Parser)]
@@ -43,6 +47,10 @@ Example:  platewright render stage.toml --play take.wav --into out
     /// Compare every configuration: all figures, renders and the report
     #[command(after_help = "Example:  platewright compare stage.toml --play take.wav --into out")]
     Compare(CompareArguments),
+    /// Make a blind listening pack, count its answers, plan a test
+    #[command(subcommand)]
+    #[command(after_help = "Example:  platewright listen pack stage.toml --play take.wav --into pack")]
+    Listen(ListenCommand),
     /// Compare the built-in stage on the built-in recording: needs no file
     #[command(after_help = "Example:  platewright demo --into out")]
     Demo(DemoArguments),
@@ -180,6 +188,9 @@ pub struct CompareArguments {
     pub play: PlayArguments,
     #[command(flatten)]
     pub into: IntoArguments,
+    /// Make a listening pack of the same configurations and recordings too, in DIR/pack
+    #[arg(long)]
+    pub pack: bool,
     /// Level of the figures, V rms at the input [default: a quarter of source.full_scale]
     #[arg(long, value_name = "V")]
     pub level: Option<String>,

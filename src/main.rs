@@ -6,6 +6,7 @@ mod commands;
 mod failure;
 mod figures;
 mod iec60062;
+mod listening;
 mod option_values;
 mod plan;
 mod profile;

@@ -28,6 +28,21 @@ pub const TAIL: Range = Range { what: "a time from 0 to 600 s", low: 0.0, high: 
 /// Range of `--drive`.
 pub const DRIVE: Range = Range { what: "a gain from -120 to 120 dB", low: -120.0, high: 120.0, example: "-6" };
 
+/// Range of `--from`.
+pub const FROM: Range = Range { what: "a time from 0 to 100000 s", low: 0.0, high: 1e5, example: "12.5" };
+/// Range of `--length`: loudness has none below, and a pack is held in memory.
+pub const LENGTH: Range = Range { what: "a time from 0.4 to 120 s", low: 0.4, high: 120.0, example: "20" };
+/// Range of `--effect`.
+pub const EFFECT: Range = Range {
+    what: "a probability above 0.5, up to 1: guessing is right half the time",
+    low: 0.501,
+    high: 1.0,
+    example: "0.7",
+};
+/// Range of `--power` and `--alpha`.
+pub const PROBABILITY: Range =
+    Range { what: "a probability from 0.0001 to 0.9999", low: 1e-4, high: 0.9999, example: "0.8" };
+
 impl Range {
     /// The value of an option that may be left out.
     ///

@@ -1,5 +1,7 @@
 //! What a command is to do, once the arguments have been understood: nothing below sees a raw argument again.
 
+mod listen;
+
 use std::path::PathBuf;
 
 use platewright_dsp::analysis::TonePair;
@@ -11,6 +13,8 @@ use crate::cli::{
 use crate::failure::RequestError;
 use crate::iec60062;
 use crate::option_values::{DRIVE, HERTZ, LEVEL, OHMS, TAIL, items, oversample, rate, tone, tone_pair};
+
+pub use listen::{ListenPlan, PackOptions, PackPlan, TallyPlan, TrialsPlan};
 
 /// A command with everything it needs.
 #[derive(Debug)]
@@ -25,6 +29,8 @@ pub enum Plan {
     Render(RenderPlan),
     /// Figures, sound and report.
     Compare(ComparePlan),
+    /// Listening packs and their answers.
+    Listen(ListenPlan),
     /// The same for the built-in stage and recording.
     Demo(DemoPlan),
 }
@@ -108,6 +114,8 @@ pub struct ComparePlan {
     pub play: Vec<PathBuf>,
     /// Where the files go.
     pub into: Into,
+    /// How a listening pack is made beside the rest; none makes none.
+    pub pack: Option<PackOptions>,
     /// Level of the figures, V rms; none is a quarter of full scale.
     pub level: Option<f64>,
     /// A target profile.
@@ -203,6 +211,7 @@ impl Plan {
             Command::Measure(measure) => Self::Measure(MeasurePlan::new(measure)?),
             Command::Render(render) => Self::Render(RenderPlan::new(render)?),
             Command::Compare(compare) => Self::Compare(ComparePlan::new(compare)?),
+            Command::Listen(listen) => Self::Listen(ListenPlan::new(listen)?),
             Command::Demo(DemoArguments { into, figures }) => {
                 Self::Demo(DemoPlan { into: into.into(), figures: figures.into() })
             }
@@ -265,6 +274,11 @@ impl RenderPlan {
 
 impl ComparePlan {
     fn new(arguments: CompareArguments) -> Result<Self, RequestError> {
+        let sound = Sound::new(&arguments.sound)?;
+        let pack = arguments.pack.then(|| PackOptions {
+            sound: Sound { drive: sound.drive, oversample: sound.oversample, ..Sound::default() },
+            ..PackOptions::default()
+        });
         Ok(Self {
             stage: arguments.stage,
             play: arguments.play.files,
@@ -274,7 +288,8 @@ impl ComparePlan {
             csv: arguments.csv,
             trust: arguments.trust == Switch::On,
             levels: arguments.units.into(),
-            sound: Sound::new(&arguments.sound)?,
+            sound,
+            pack,
             figures: arguments.figures.into(),
         })
     }

@@ -5,6 +5,7 @@ use std::fs::{self, File};
 use std::io::{self, Write};
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
+use std::time::SystemTime;
 
 use tempfile::NamedTempFile;
 
@@ -219,6 +220,14 @@ impl StagedFile {
     /// Where the file will stand.
     pub fn target(&self) -> &Path {
         &self.target
+    }
+
+    /// Gives the file another time of last change; to be called after the last byte.
+    ///
+    /// # Errors
+    /// The system refuses.
+    pub fn set_modified(&self, time: SystemTime) -> Result<(), AudioError> {
+        self.temporary.as_file().set_modified(time).map_err(AudioError::write(&self.target))
     }
 }
 

@@ -123,6 +123,20 @@ pub struct BlockReader {
 }
 
 impl BlockReader {
+    /// Passes over so many frames, or over all that are left.
+    ///
+    /// # Errors
+    /// The file cannot be read.
+    pub fn skip(&mut self, frames: u64) -> Result<(), AudioError> {
+        let WavHeader { coding, channels, frames: all, .. } = self.recording.header;
+        let frames = frames.min(all - self.position);
+        let bytes = frames * (channels * coding.bytes()) as u64;
+        let seek = self.file.seek_relative(i64::try_from(bytes).unwrap_or(i64::MAX));
+        seek.map_err(AudioError::read(&self.recording.path))?;
+        self.position += frames;
+        Ok(())
+    }
+
     /// Replaces the planes' contents with the next block, one plane a channel, and returns its frames: `max_frames`,
     /// fewer at the end, then 0.
     ///

@@ -4,6 +4,10 @@ mod bias;
 mod compare;
 mod csv_file;
 mod demo;
+mod listen;
+mod listen_pack;
+mod listen_plan;
+mod listen_tally;
 mod measure;
 mod new;
 mod render;
@@ -34,6 +38,7 @@ pub fn run(plan: &Plan) -> Result<Outcome, Failure> {
         Plan::Measure(plan) => measure::run(plan),
         Plan::Render(plan) => render::run(plan),
         Plan::Compare(plan) => compare::run(plan),
+        Plan::Listen(plan) => listen::run(plan),
         Plan::Demo(plan) => demo::run(plan),
     }
 }

@@ -1,11 +1,13 @@
 //! Recordings through every configuration into WAV files at one level.
 
 mod estimate;
+mod excerpt;
 mod lanes;
 mod level;
 mod names;
 mod passage;
 mod progress;
+mod stepping;
 
 use std::path::PathBuf;
 
@@ -20,6 +22,7 @@ use crate::plan::Sound;
 use crate::stage_file::Configuration;
 
 pub use estimate::Estimate;
+pub use excerpt::{Planes, excerpt, recorded};
 use level::Level;
 use passage::Passage;
 pub use progress::Progress;
@@ -119,33 +122,38 @@ impl<'a> Job<'a> {
     }
 
     fn passage<'j>(&'j self, recording: &'j Recording, files: &'j [PathBuf]) -> Result<Passage<'j>, Failure> {
-        let oversampling = self.oversampling(recording)?;
-        let rate = f64::from(recording.sample_rate()) * oversampling.factor() as f64;
-        let machines = lanes::machines(self.configurations, rate).map_err(|(index, reason)| {
-            let name = &self.configurations[index].name;
-            WorkError::Failed {
-                problem: format!("configuration \"{name}\" cannot be rendered: {reason}"),
-                remedy: "look at it with `platewright bias` first".to_owned(),
-            }
-        })?;
-        let lanes = lanes::Lanes::new(
-            self.configurations,
-            &machines,
-            recording.channels(),
-            oversampling,
-            self.kernel,
-            ratio(self.sound.drive),
-        );
+        let oversampling = oversampling(self.sound, recording)?;
+        let lanes = lanes_for(self.configurations, recording, self.sound, oversampling, self.kernel)?;
         Ok(Passage::new(self, recording, files, oversampling, lanes))
     }
+}
 
-    fn oversampling(&self, recording: &Recording) -> Result<Oversampling, Failure> {
-        match self.sound.oversample {
-            None => Ok(Oversampling::to_reach(ENGINE_RATE, recording.sample_rate())),
-            Some(factor) => Oversampling::new(factor).map_err(|bad| {
-                RequestError::new(format!("--oversample: {bad}"), "leave it out for the usual factor").into()
-            }),
+/// Lanes for every channel of `recording` through every configuration.
+fn lanes_for(
+    configurations: &[Configuration],
+    recording: &Recording,
+    sound: &Sound,
+    oversampling: Oversampling,
+    kernel: Kernel,
+) -> Result<lanes::Lanes, Failure> {
+    let rate = f64::from(recording.sample_rate()) * oversampling.factor() as f64;
+    let machines = lanes::machines(configurations, rate).map_err(|(index, reason)| {
+        let name = &configurations[index].name;
+        WorkError::Failed {
+            problem: format!("configuration \"{name}\" cannot be rendered: {reason}"),
+            remedy: "look at it with `platewright bias` first".to_owned(),
         }
+    })?;
+    let drive = ratio(sound.drive);
+    Ok(lanes::Lanes::new(configurations, &machines, recording.channels(), oversampling, kernel, drive))
+}
+
+fn oversampling(sound: &Sound, recording: &Recording) -> Result<Oversampling, Failure> {
+    match sound.oversample {
+        None => Ok(Oversampling::to_reach(ENGINE_RATE, recording.sample_rate())),
+        Some(factor) => Oversampling::new(factor).map_err(|bad| {
+            RequestError::new(format!("--oversample: {bad}"), "leave it out for the usual factor").into()
+        }),
     }
 }
 

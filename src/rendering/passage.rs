@@ -9,15 +9,13 @@ use platewright_dsp::signal::{Oversampling, Resampler, TriangularDither};
 use super::lanes::Lanes;
 use super::level::Level;
 use super::progress::Progress;
+use super::stepping::{self, BLOCK, Extent};
 use super::{Estimate, Job, RenderFigures, names};
 use crate::audio_files::{OutputFolder, Recording, SampleFormat, Scratch, StagedFile, WavOutput};
 use crate::cli;
 use crate::failure::{Failure, RequestError};
 use crate::plan::Sound;
 use crate::stage_file::Configuration;
-
-/// Frames that pass together.
-const BLOCK: usize = 8192;
 
 /// A recording on its way.
 pub struct Passage<'a> {
@@ -137,34 +135,17 @@ impl<'a> Passage<'a> {
         let mut sinks: Vec<Sink> =
             (0..self.configurations.len()).map(|c| self.sink(folder, c)).collect::<Result<_, _>>()?;
         let mut blocks = self.recording.blocks()?;
-        let mut input = vec![Vec::new(); channels];
-        let mut output = vec![vec![Vec::new(); channels]; self.configurations.len()];
-        let (mut late, mut left) = (self.lanes.latency(), self.frames());
+        let configurations = self.configurations.len();
+        let extent = Extent { configurations, channels, frames: self.frames() };
         let mut input_peak = 0.0_f64;
-        while left > 0 {
-            let mut frames = blocks.read(&mut input, BLOCK)?;
-            progress.add((frames * channels * self.configurations.len()) as u64);
-            input_peak = input.iter().flatten().fold(input_peak, |peak, sample| peak.max(sample.abs()));
-            if frames == 0 {
-                frames = BLOCK.min(usize::try_from(left).unwrap_or(BLOCK) + late);
-                input.iter_mut().for_each(|channel| {
-                    channel.clear();
-                    channel.resize(frames, 0.0);
-                });
-            }
-            self.lanes.process(&input, frames, &mut output);
-            let skipped = late.min(frames);
-            let kept = usize::try_from(left).unwrap_or(usize::MAX).min(frames - skipped);
-            late -= skipped;
-            left -= kept as u64;
-            for (sink, channels) in sinks.iter_mut().zip(&mut output) {
-                channels.iter_mut().for_each(|channel| {
-                    channel.truncate(skipped + kept);
-                    channel.drain(..skipped);
-                });
-                sink.take(channels)?;
-            }
-        }
+        let mut read = |planes: &mut [Vec<f64>]| -> Result<usize, Failure> {
+            let frames = blocks.read(planes, BLOCK)?;
+            progress.add((frames * channels * configurations) as u64);
+            input_peak = planes.iter().flatten().fold(input_peak, |peak, sample| peak.max(sample.abs()));
+            Ok(frames)
+        };
+        let mut take = |configuration: usize, planes: &mut [Vec<f64>]| sinks[configuration].take(planes);
+        stepping::step(&mut self.lanes, &extent, &mut read, &mut take)?;
         for sink in &mut sinks {
             sink.end()?;
         }
