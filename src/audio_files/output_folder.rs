@@ -60,7 +60,7 @@ impl OutputPlan {
         let Some(name) = file.file_name().map(PathBuf::from) else {
             return Err(AudioError::OutputIsFolder { path: file.to_owned() });
         };
-        let plan = Self::check(file.parent().unwrap_or(Path::new("")), true, &[name.clone()], inputs)?;
+        let plan = Self::check(file.parent().unwrap_or(Path::new("")), true, std::slice::from_ref(&name), inputs)?;
         if !replace && file.symlink_metadata().is_ok() {
             return Err(AudioError::FileExists { path: file.to_owned() });
         }

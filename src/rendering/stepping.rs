@@ -16,18 +16,18 @@ pub struct Extent {
     pub frames: u64,
 }
 
+/// Fills a plane a channel and says how many frames there are; 0 at the end.
+pub type Read<'a> = dyn FnMut(&mut [Vec<f64>]) -> Result<usize, Failure> + 'a;
+/// Takes a configuration's next frames, a plane a channel, in volts.
+pub type Take<'a> = dyn FnMut(usize, &mut [Vec<f64>]) -> Result<(), Failure> + 'a;
+
 /// Steps sound through `lanes`. `read` fills one plane a channel and returns the frames, 0 once the sound has ended:
 /// silence follows until the last frame has come out. `take` gets each configuration's volts, block by block, from the
 /// first frame of the sound on; it may use up the planes' contents.
 ///
 /// # Errors
 /// Those of `read` and `take`.
-pub fn step(
-    lanes: &mut Lanes,
-    extent: &Extent,
-    read: &mut dyn FnMut(&mut [Vec<f64>]) -> Result<usize, Failure>,
-    take: &mut dyn FnMut(usize, &mut [Vec<f64>]) -> Result<(), Failure>,
-) -> Result<(), Failure> {
+pub fn step(lanes: &mut Lanes, extent: &Extent, read: &mut Read<'_>, take: &mut Take<'_>) -> Result<(), Failure> {
     let mut input = vec![Vec::new(); extent.channels];
     let mut output = vec![vec![Vec::new(); extent.channels]; extent.configurations];
     let (mut late, mut left) = (lanes.latency(), extent.frames);

@@ -62,11 +62,12 @@ pub fn headroom(configurations: &[ConfigurationFigures], unit: LevelUnit) -> Opt
         let name = format!("THD {} %", thd.percent.unwrap_or_default());
         limit_rows(&mut table, &name, all.iter().map(|h| h.and_then(|h| h.thd.get(index))).collect(), unit);
     }
-    let named: [(&str, fn(&HeadroomFigures) -> &LimitFigures); 3] =
-        [("gain −1 dB", |h| &h.compression_1db), ("grid current", |h| &h.grid_current), ("cut-off", |h| &h.cutoff)];
-    for (name, of) in named {
+    let mut named = |name: &str, of: fn(&HeadroomFigures) -> &LimitFigures| {
         limit_rows(&mut table, name, all.iter().map(|h| h.map(of)).collect(), unit);
-    }
+    };
+    named("gain −1 dB", |h| &h.compression_1db);
+    named("grid current", |h| &h.grid_current);
+    named("cut-off", |h| &h.cutoff);
     Some(table)
 }
 
