@@ -26,7 +26,7 @@ pub use operating_point::{Meter, OperatingPoint, PartStress, TubePoint};
 pub use profile::{NoLevel, Target, Want, distance_db, level_for_output};
 pub use ratings::{Limit, TubeStress, cold_volts, tube_stresses, tube_type};
 pub use small_signal::{Response, SmallSignal};
-pub use steady_state::{NoSteadyState, Period, bins, harmonics, steady_state};
+pub use steady_state::{NoSteadyState, Period, bins, harmonics, steady_state, steady_state_near};
 pub use sweep::{Band, band, frequencies, level_sweep, levels, ripple_rejection_db};
 pub use tone::Tone;
 pub use trust::{ensemble, fits, half_range, median, percentile};

@@ -1,9 +1,11 @@
 //! A tone through the stage: gain and harmonics, each with how far it can be trusted.
 
+use std::cell::RefCell;
+
 use num_complex::Complex64;
 
 use super::refine::refined;
-use super::steady_state::{NoSteadyState, harmonics, steady_state};
+use super::steady_state::{NoSteadyState, Period, harmonics, steady_state, steady_state_near};
 use crate::circuit::Network;
 use crate::portable::{decibels, degrees, magnitude};
 
@@ -37,9 +39,18 @@ impl Tone {
         input_rms: f64,
         orders: usize,
     ) -> Result<Tone, NoSteadyState> {
+        // Each finer period is sought from the one before.
+        let found: RefCell<Option<Period>> = RefCell::new(None);
         let sums = |steps: usize| -> Result<Vec<Complex64>, NoSteadyState> {
             let input = sine(steps, input_rms * std::f64::consts::SQRT_2);
-            Ok(harmonics(&steady_state(network, &input, frequency * steps as f64)?.output, orders))
+            let rate = frequency * steps as f64;
+            let period = match found.take() {
+                Some(coarser) => steady_state_near(network, &input, rate, &coarser)?,
+                None => steady_state(network, &input, rate)?,
+            };
+            let sums = harmonics(&period.output, orders);
+            found.replace(Some(period));
+            Ok(sums)
         };
         let harmonics = refined(FIRST_STEPS.max(orders * STEPS_AN_ORDER), &sums)?;
         Ok(Tone { frequency, input_rms, harmonics })

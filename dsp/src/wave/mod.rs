@@ -15,4 +15,4 @@ pub use machine::{Machine, Shape, WaveError};
 pub use modes::Modes;
 pub(crate) use rest::Rest;
 pub use root::RootCounts;
-pub(crate) use single::{Sensitivity, Single, SingleState};
+pub(crate) use single::{Amplitudes, Sensitivity, Single};

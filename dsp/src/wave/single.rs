@@ -15,13 +15,8 @@ const PLAIN_STEPS: usize = 10;
 /// How the present state depends on the state at the start, modes × modes.
 pub(crate) type Sensitivity<const MODES: usize> = [[f64; MODES]; MODES];
 
-/// What changes from step to step.
-#[derive(Clone, Debug)]
-pub(crate) struct SingleState<const PORTS: usize, const MODES: usize> {
-    pub modes: [f64; MODES],
-    /// Root voltages of the last three steps, newest first.
-    pub volts: [[f64; PORTS]; 3],
-}
+/// Amplitudes of the modes, counted from rest: all that a step leaves to the next.
+pub(crate) type Amplitudes<const MODES: usize> = [f64; MODES];
 
 /// One machine with computed laws.
 pub(crate) struct Single<'a, const PORTS: usize, const MODES: usize> {
@@ -73,23 +68,20 @@ impl<'a, const PORTS: usize, const MODES: usize> Single<'a, PORTS, MODES> {
         }
     }
 
-    /// The state of rest, with `volts` at the root.
-    pub fn at_rest(volts: &[f64; MAX_PORTS]) -> SingleState<PORTS, MODES> {
-        SingleState { modes: [0.0; MODES], volts: [std::array::from_fn(|p| volts[p]); 3] }
-    }
-
-    /// One step with `signal` volts at `in`; returns the volts at `o`.
+    /// One step with `signal` volts at `in`; the root's voltages begin at `guess`. Returns the volts at `o` and at the
+    /// root.
     #[inline]
     pub fn step(
         &mut self,
-        state: &mut SingleState<PORTS, MODES>,
+        state: &mut Amplitudes<MODES>,
         signal: f64,
+        guess: &[f64; PORTS],
         sensitivity: Option<&mut Sensitivity<MODES>>,
-    ) -> f64 {
-        let root = self.root(state, signal);
+    ) -> (f64, [f64; PORTS]) {
+        let root = self.root(state, signal, guess);
         let mut output = self.source.output_constant + self.source.output_by_signal * signal;
         for k in 0..MODES {
-            output += self.output_by_mode[k] * state.modes[k];
+            output += self.output_by_mode[k] * state[k];
         }
         for p in 0..PORTS {
             output += self.output_by_current[p] * root.amps[p];
@@ -99,26 +91,24 @@ impl<'a, const PORTS: usize, const MODES: usize> Single<'a, PORTS, MODES> {
         }
         for k in 0..MODES {
             let mut next = self.mode_by_signal[k] * signal + self.mode_constant[k];
-            next += self.eigenvalue[k] * state.modes[k];
+            next += self.eigenvalue[k] * state[k];
             for p in 0..PORTS {
                 next += self.mode_by_current[k][p] * root.amps[p];
             }
-            state.modes[k] = next;
+            state[k] = next;
         }
-        state.volts = [root.volts, state.volts[0], state.volts[1]];
-        output
+        (output, root.volts)
     }
 
     #[inline]
-    fn root(&mut self, state: &SingleState<PORTS, MODES>, signal: f64) -> Rooted<PORTS> {
+    fn root(&mut self, state: &Amplitudes<MODES>, signal: f64, guess: &[f64; PORTS]) -> Rooted<PORTS> {
         let mut offer = [0.0; PORTS];
-        let mut volts = [0.0; PORTS];
+        let mut volts = *guess;
         for p in 0..PORTS {
             offer[p] = self.root_constant[p] + self.root_by_signal[p] * signal;
             for k in 0..MODES {
-                offer[p] += self.root_by_mode[p][k] * state.modes[k];
+                offer[p] += self.root_by_mode[p][k] * state[k];
             }
-            volts[p] = 3.0 * (state.volts[0][p] - state.volts[1][p]) + state.volts[2][p];
         }
         for _ in 0..PLAIN_STEPS {
             self.counts.newton += 1;
