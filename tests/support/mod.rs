@@ -2,6 +2,8 @@
 //! Each test binary uses a part of it.
 #![allow(dead_code)]
 
+pub mod sound;
+
 use std::collections::BTreeSet;
 use std::path::PathBuf;
 use std::process::Command;
@@ -65,8 +67,14 @@ impl Folder {
 
     /// Runs the program here.
     pub fn run(&self, arguments: &[&str]) -> Run {
+        self.run_with(&[], arguments)
+    }
+
+    /// Runs the program here with variables of its environment set.
+    pub fn run_with(&self, variables: &[(&str, &str)], arguments: &[&str]) -> Run {
         let output = Command::new(env!("CARGO_BIN_EXE_platewright"))
             .args(arguments)
+            .envs(variables.iter().copied())
             .current_dir(self.0.path())
             .output()
             .expect("the program starts");
@@ -75,6 +83,24 @@ impl Folder {
             stdout: String::from_utf8_lossy(&output.stdout).into_owned(),
             stderr: String::from_utf8_lossy(&output.stderr).into_owned(),
         }
+    }
+
+    /// Runs the program and expects it to do what is asked.
+    pub fn done(&self, arguments: &[&str]) -> Run {
+        let run = self.run(arguments);
+        assert_eq!(run.code, Some(0), "{arguments:?}:\n{}", run.stderr);
+        run
+    }
+
+    /// The JSON that the program prints, and nothing else, for what is asked.
+    pub fn json(&self, arguments: &[&str]) -> serde_json::Value {
+        let run = self.done(&[arguments, &["--json"]].concat());
+        serde_json::from_str(&run.stdout).unwrap_or_else(|error| panic!("{arguments:?}: {error}:\n{}", run.stdout))
+    }
+
+    /// The bytes of a file.
+    pub fn bytes(&self, name: &str) -> Vec<u8> {
+        std::fs::read(self.path(name)).unwrap_or_else(|error| panic!("{name}: {error}"))
     }
 
     /// Runs the program, expects it to refuse with exit code 2, nothing on standard output and nothing created, and
