@@ -29,20 +29,22 @@ pub const DOUBTFUL_ROW: &str = "doubtful in the source";
 
 /// Relative standard errors. Typical operation is a maker's bogey, printed to two figures; an amplifier chart adds the
 /// rounding of its whole numbers; a row off its own trend counts with three times the error.
-const CURRENT_ERROR: f64 = 0.012;
-const MU_ERROR: f64 = 0.03;
-const SLOPE_ERROR: f64 = 0.04;
+const CURRENT_ERROR: f64 = 0.02;
+/// A typical operation that stands at the maker's own rating is met closely: it must not count as an overload.
+const AT_RATING_ERROR: f64 = 0.003;
+const MU_ERROR: f64 = 0.05;
+const SLOPE_ERROR: f64 = 0.05;
 const CHART_ERROR: f64 = 0.012;
 const ROUNDING: f64 = 0.29;
-const TABLE_GAIN_ERROR: f64 = 0.015;
+const TABLE_GAIN_ERROR: f64 = 0.012;
 const TABLE_CURRENT_ERROR: f64 = 0.02;
-const MU_LINE_ERROR: f64 = 0.008;
+const MU_LINE_ERROR: f64 = 0.007;
 const DOUBTFUL: f64 = 3.0;
 
 /// Measured curves: part of the reading, and part of the full scale; the points of a curve err together, so many points
 /// count as `CURVE_COUNT` of them.
-const CURVE_ERROR: f64 = 0.015;
-const CURVE_FLOOR: f64 = 0.004;
+const CURVE_ERROR: f64 = 0.012;
+const CURVE_FLOOR: f64 = 0.003;
 const CURVE_COUNT: f64 = 40.0;
 
 const TYPICAL_SOURCE: &str = "makers' data sheets and RCA Receiving Tube Manual RC-30, typical operation";
@@ -98,6 +100,10 @@ fn typical(tables: &Tables, name: &str) -> Vec<Gathered> {
                 (vgk, _) => (Condition::Bias { vpk, vgk: vgk.unwrap_or_default() }, vgk.unwrap_or_default()),
             };
             let published = pick(row);
+            let watts = vpk * row.plate_mA * 1e-3;
+            let at_rating =
+                quantity == Quantity::PlateCurrent && row.max_plate_W.is_some_and(|most| watts > 0.98 * most);
+            let error = if at_rating { AT_RATING_ERROR } else { error };
             GatheredRow {
                 at: vec![vpk, bias],
                 figure: Figure { condition, quantity, published, error: error * published },

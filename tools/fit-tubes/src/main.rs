@@ -2,7 +2,8 @@
 //!
 //! `cargo run --release -p fit-tubes` writes every data file anew, the same bytes on every machine;
 //! `cargo run --release -p fit-tubes -- 12AX7 6SN7GTB` those types alone (their neighbours are fitted first);
-//! `--check` prints the errors and writes nothing, `--rows` prints every figure.
+//! `--check` prints the errors and writes nothing, `--rows` prints every figure;
+//! `--nominal` leaves the ensembles out, which is quick, for trying things.
 
 mod evidence;
 mod fit;
@@ -21,7 +22,7 @@ use tables::{Failure, Tables, TypeEntry};
 fn main() -> ExitCode {
     let (flags, names): (Vec<_>, Vec<_>) = std::env::args().skip(1).partition(|word| word.starts_with("--"));
     let given = |name: &str| flags.iter().any(|flag| flag == name);
-    match run(&names, given("--check"), given("--rows")) {
+    match run(&names, given("--check"), given("--rows"), given("--nominal")) {
         Ok(()) => ExitCode::SUCCESS,
         Err(failure) => {
             eprintln!("fit-tubes: {failure}");
@@ -30,7 +31,7 @@ fn main() -> ExitCode {
     }
 }
 
-fn run(names: &[String], check: bool, rows: bool) -> Result<(), Failure> {
+fn run(names: &[String], check: bool, rows: bool, nominal: bool) -> Result<(), Failure> {
     let tables = Tables::read()?;
     let mut laws: BTreeMap<String, Law> = BTreeMap::new();
     for entry in &tables.types {
@@ -42,7 +43,7 @@ fn run(names: &[String], check: bool, rows: bool) -> Result<(), Failure> {
         if neighbours.len() != entry.neighbours.len() {
             return Err(format!("{}: a neighbour stands after it in types.toml", entry.name));
         }
-        let fitted = fit::fit(&entry.name, entry.family(), &gathered, &neighbours);
+        let fitted = fit::fit(&entry.name, entry.family(), &gathered, &neighbours, !nominal);
         laws.insert(entry.name.clone(), fitted.nominal.law);
         let record = record::assemble(&tables, entry, &gathered, &fitted)?;
         print_errors(&record, rows);

@@ -152,14 +152,12 @@ fn beside(set: &Gathered, found: &Specimen, nominal: &Parameters) -> Evidence {
         note: row.note.clone(),
     };
     let rows: Vec<Row> = set.rows.iter().map(row).collect();
-    let errors = |fitted: bool| {
-        errors(
-            set.rows
-                .iter()
-                .filter(|row| row.fitted == fitted)
-                .map(|row| 100.0 * (row.figure.of_specimen(&tube, &specimen) / row.figure.published - 1.0).abs()),
-        )
-    };
+    // A row that its own source doubts is shown and counts in neither.
+    let counts = |row: &&GatheredRow| row.note.as_deref() != Some(DOUBTFUL_ROW);
+    let error =
+        |row: &GatheredRow| 100.0 * (row.figure.of_specimen(&tube, &specimen) / row.figure.published - 1.0).abs();
+    let errors =
+        |fitted: bool| errors(set.rows.iter().filter(|row| row.fitted == fitted).filter(counts).map(error));
     Evidence {
         what: set.what.into(),
         quantity: set.quantity.into(),

@@ -5,11 +5,13 @@
 
 mod evidence;
 mod least_squares;
+mod points;
 mod random;
 mod space;
 mod task;
 
 pub use evidence::{Condition, Figure, Quantity, Specimen, Stage};
+pub use points::{CurvePoint, FEWEST_POINTS, Fit, FitError, FitOptions, fit_points};
 pub use random::Random;
 pub use space::{Family, Prior, coordinates};
 pub use task::{Set, Solution, Task};

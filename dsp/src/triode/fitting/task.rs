@@ -46,7 +46,7 @@ const ROBUST_FROM: f64 = 2.0;
 /// Standard deviations of the logarithms of a measured specimen's plate-current and µ factors, and of its grid offset, V.
 /// Sixty ECC88 sections scatter by 13 % and 10 % (derived from published curve-tracer data), single specimens stand up to
 /// 40 % off; the offset is common practice, no source.
-const SPECIMEN_SPREAD: [f64; 3] = [0.25, 0.08, 0.15];
+const SPECIMEN_SPREAD: [f64; 3] = [0.25, 0.04, 0.1];
 
 /// Specimens' factors stay between e^−1 and e, their offsets within a volt.
 const SPECIMEN_BOUNDS: Bounds = Bounds { low: -1.0, high: 1.0 };

@@ -27,7 +27,10 @@ macro_rules! entries {
         }),*];
     };
 }
-entries!("12AX7", "12AT7", "12AU7", "12BH7A", "6SN7GTB", "6DJ8");
+entries!(
+    "12AX7", "12AT7", "12AU7", "12AY7", "12BH7A", "6SN7GTB", "6SL7GT", "6J5", "6CG7", "6C4", "6DJ8", "E88CC",
+    "6N23P", "6N2P", "6N6P", "6N30P", "E182CC", "5687", "ECC99", "12B4A", "5842", "6S45P",
+);
 
 impl Entry {
     // The tests read every embedded file, so none is ever missing for a user.
