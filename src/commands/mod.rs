@@ -7,6 +7,7 @@ mod demo;
 mod measure;
 mod new;
 mod render;
+mod report;
 
 use std::path::{Path, PathBuf};
 
@@ -35,6 +36,7 @@ pub fn run(plan: &Plan) -> Result<Outcome, Failure> {
         Plan::Render(plan) => render::run(plan),
         Plan::Compare(plan) => compare::run(plan),
         Plan::Demo(plan) => demo::run(plan),
+        Plan::Report(plan) => report::run(plan),
     }
 }
 

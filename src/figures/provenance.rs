@@ -25,6 +25,7 @@ fn tube(kind: &TubeType) -> TubeDataFigures {
     let record = library::record(&kind.name).filter(|_| kind.from_library);
     let model = match kind.section.law {
         Law::TwoSection(_) => "two-section",
+        Law::ThreeSection(_) => "three-section",
         Law::DempwolfZoelzer(_) => "dempwolf-zoelzer",
         Law::Koren(_) => "koren",
     };

@@ -146,11 +146,6 @@ impl Canvas {
         inside && self.taken.iter().all(|taken| !taken.meets(&room))
     }
 
-    /// Keeps labels out of a box.
-    pub fn keep_free(&mut self, left: f64, top: f64, right: f64, bottom: f64) {
-        self.taken.push(Box { left, top, right, bottom });
-    }
-
     pub fn open_group(&mut self, class: &str) {
         self.add(format_args!(r#"<g class="{class}">"#));
     }
@@ -229,10 +224,7 @@ mod tests {
 
     #[test]
     fn text_cannot_leave_its_place() {
-        assert_eq!(
-            escaped("</script>\"'&\u{202e}"),
-            "&lt;/script&gt;&quot;&#39;&amp;\\u{202e}"
-        );
+        assert_eq!(escaped("</script>\"'&\u{202e}"), "&lt;/script&gt;&quot;&#39;&amp;\\u{202e}");
     }
 
     #[test]

@@ -10,6 +10,17 @@ pub fn nice(text: &str) -> String {
     text.replace('-', "−").replace(' ', "\u{a0}")
 }
 
+/// A sentence with figures in it: no break between a number and what follows it.
+pub fn nice_sentence(text: &str) -> String {
+    let mut out = String::with_capacity(text.len());
+    let mut before = ' ';
+    for c in text.chars() {
+        out.push(if c == ' ' && before.is_ascii_digit() { '\u{a0}' } else { c });
+        before = c;
+    }
+    crate::terminal::plain(&out).into_owned()
+}
+
 /// A number with fixed decimals.
 pub fn plain_number(value: f64, decimals: usize) -> String {
     let text = format!("{value:.decimals$}");
@@ -46,10 +57,6 @@ pub fn percent(value: f64) -> String {
     nice(&units::percent(value))
 }
 
-pub fn volts(value: f64) -> String {
-    nice(&units::volts(value))
-}
-
 /// A voltage of the bench, to what a meter shows.
 pub fn bench_volts(value: f64) -> String {
     match value.abs() {
@@ -66,6 +73,16 @@ pub fn level(volts_rms: f64) -> String {
         v if v >= 0.0995 => (v, "V"),
         v if v >= 0.995e-4 => (1e3 * v, "mV"),
         v => (1e6 * v, "µV"),
+    };
+    format!("{}\u{a0}{unit}", significant(value, 3))
+}
+
+/// A frequency with three digits.
+pub fn frequency(hertz: f64) -> String {
+    let (value, unit) = match hertz {
+        v if v >= 0.9995e6 => (v / 1e6, "MHz"),
+        v if v >= 999.5 => (v / 1e3, "kHz"),
+        v => (v, "Hz"),
     };
     format!("{}\u{a0}{unit}", significant(value, 3))
 }

@@ -2,7 +2,6 @@
 
 use super::{Meter, OperatingPoint};
 use crate::circuit::{Network, Node};
-use crate::triode::{Law, Section};
 
 /// What differs from build to build. Widening it is a matter of more fields here and lines in [`Scatter::build`].
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -66,9 +65,10 @@ impl Scatter {
             source.resistance *= of_part(source.key, &mut chance);
         }
         network.scale_supply(1.0 + self.supply * chance.symmetric());
-        let (emission, mu) = (self.emission.pair(self.one_bottle, &mut chance), self.mu.pair(self.one_bottle, &mut chance));
+        let (emission, mu) =
+            (self.emission.pair(self.one_bottle, &mut chance), self.mu.pair(self.one_bottle, &mut chance));
         for (tube, triode) in network.triodes.iter_mut().enumerate() {
-            triode.section = scaled(&triode.section, emission[tube.min(1)], mu[tube.min(1)]);
+            triode.section.law = triode.section.law.scaled(emission[tube.min(1)], mu[tube.min(1)]);
         }
         network
     }
@@ -89,26 +89,6 @@ impl TubeScatter {
             factor.clamp(self.low, self.high)
         })
     }
-}
-
-/// A section with `emission` times the plate current at the same voltages and `mu_factor` times the µ.
-fn scaled(section: &Section, emission: f64, mu_factor: f64) -> Section {
-    let mut out = *section;
-    match &mut out.law {
-        Law::TwoSection(law) => {
-            law.g *= emission;
-            law.mu *= mu_factor;
-        }
-        Law::DempwolfZoelzer(law) => {
-            law.g *= emission;
-            law.mu *= mu_factor;
-        }
-        Law::Koren(law) => {
-            law.kg1 /= emission;
-            law.mu *= mu_factor;
-        }
-    }
-    out
 }
 
 /// What a meter of `meter_ohms` reads at each of `nodes` in one build, V; `None` where a node is missing or the build

@@ -14,8 +14,12 @@ pub fn cycles(of: Lettered<'_>, cycles: &[CycleFigures]) -> Option<Picture> {
     let scaled = |cycle: &CycleFigures| -> Vec<f64> {
         cycle.output.iter().map(|volts| volts / (cycle.input_rms * std::f64::consts::SQRT_2)).collect()
     };
-    let shapes: Vec<(usize, &CycleFigures, Vec<f64>)> =
-        cycles.iter().enumerate().map(|(k, c)| (k, c, scaled(c))).filter(|(_, _, shape)| !shape.is_empty()).collect();
+    let shapes: Vec<(usize, &CycleFigures, Vec<f64>)> = cycles
+        .iter()
+        .enumerate()
+        .map(|(k, c)| (k, c, scaled(c)))
+        .filter(|(_, _, shape)| !shape.is_empty())
+        .collect();
     let reach = shapes.iter().flat_map(|(_, _, shape)| shape).fold(0.0, |a: f64, b| a.max(b.abs()));
     if reach == 0.0 {
         return None;

@@ -3,8 +3,7 @@
 use super::Lettered;
 use super::axis::Axis;
 use super::frame::{Edges, Frame, WIDTH};
-use crate::figures::ToneFigures;
-use crate::report::document::Target;
+use crate::figures::{ProfileHarmonicFigures, ToneFigures};
 use crate::report::svg::{Anchor, Label, Picture};
 use crate::report::words;
 
@@ -13,7 +12,7 @@ const HEIGHT: f64 = 270.0;
 const FLOOR: f64 = -140.0;
 
 /// The spectrum of `tone`, with the marks of a target where one was given.
-pub fn spectrum(of: Lettered<'_>, tone: &ToneFigures, targets: &[Target]) -> Picture {
+pub fn spectrum(of: Lettered<'_>, tone: &ToneFigures) -> Picture {
     let top = tone.harmonics.iter().filter_map(|h| h.dbc).fold(-40.0, f64::max);
     let high = (20.0 * (top / 20.0).ceil()).max(-20.0) + 20.0;
     let edges = Edges::of(HEIGHT, 14.0, 0.0);
@@ -23,7 +22,7 @@ pub fn spectrum(of: Lettered<'_>, tone: &ToneFigures, targets: &[Target]) -> Pic
     let mut frame = Frame::new(HEIGHT, edges, x, y, ("harmonic", "dBc"));
     for harmonic in &tone.harmonics {
         let at = f64::from(harmonic.order);
-        let target = targets.iter().find(|t| t.order == harmonic.order);
+        let target = of.figures.profile.iter().flat_map(|profile| &profile.harmonics).find(|t| t.order == harmonic.order);
         if let Some(target) = target {
             mark_target(&mut frame, at, target);
         }
@@ -64,21 +63,20 @@ fn pin_class(index: usize) -> &'static str {
 }
 
 /// A wanted level is a box of the width allowed; a limit is a bar with its foot on the side that is forbidden.
-fn mark_target(frame: &mut Frame, at: f64, target: &Target) {
+fn mark_target(frame: &mut Frame, at: f64, target: &ProfileHarmonicFigures) {
     let half = 11.0;
     let clamp = |dbc: f64| dbc.clamp(frame.y.low, frame.y.high);
-    if let Some(wanted) = target.wanted {
-        let (x, top) = frame.place((at, clamp(wanted + target.within)));
-        let (_, bottom) = frame.place((at, clamp(wanted - target.within)));
+    if target.want == "wanted" {
+        let (x, top) = frame.place((at, clamp(target.wanted + target.within_db)));
+        let (_, bottom) = frame.place((at, clamp(target.wanted - target.within_db)));
         let height = (bottom - top).max(3.0);
         frame.canvas.rectangle("target", x - half, (top + bottom - height) / 2.0, 2.0 * half, height);
+        return;
     }
-    for (limit, foot) in [(target.at_most, -6.0), (target.at_least, 6.0)] {
-        let Some(limit) = limit else { continue };
-        let (x, y) = frame.place((at, clamp(limit)));
-        frame.canvas.line("target", (x - half, y), (x + half, y));
-        for end in [x - half, x + half] {
-            frame.canvas.line("target", (end, y), (end, y + foot));
-        }
+    let foot = if target.want == "at_most" { -6.0 } else { 6.0 };
+    let (x, y) = frame.place((at, clamp(target.wanted)));
+    frame.canvas.line("target", (x - half, y), (x + half, y));
+    for end in [x - half, x + half] {
+        frame.canvas.line("target", (end, y), (end, y + foot));
     }
 }

@@ -83,12 +83,8 @@ fn dissipation(frame: &mut Frame, plate: &PlateFigures, top_volts: f64) {
         .collect();
     let Some(end) = frame.curve("forbidden", &values) else { return };
     let text = format!("{} W", words::significant(watts, 3));
-    let places = [
-        (end.0 + 5.0, end.1 + 4.0, Anchor::Start),
-        (end.0 - 6.0, end.1 - 8.0, Anchor::End),
-    ];
-    frame.canvas.label_where_free(
-        Label { text: &text, class: "warn", x: end.0, y: end.1, anchor: Anchor::Start },
-        &places,
-    );
+    let places = [(end.0 + 5.0, end.1 + 4.0, Anchor::Start), (end.0 - 6.0, end.1 - 8.0, Anchor::End)];
+    frame
+        .canvas
+        .label_where_free(Label { text: &text, class: "warn", x: end.0, y: end.1, anchor: Anchor::Start }, &places);
 }

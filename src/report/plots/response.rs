@@ -50,10 +50,8 @@ pub fn response(group: &[Lettered<'_>], name: String) -> Option<Picture> {
         let values: Vec<_> = points(one).iter().map(value).collect();
         Some((edges.right, frame.y.at(between(&values, 1000.0)?)))
     };
-    let named: Vec<_> = group
-        .iter()
-        .filter_map(|one| Some((one.letter.to_owned(), name_class(one.index), middle(one)?)))
-        .collect();
+    let named: Vec<_> =
+        group.iter().filter_map(|one| Some((one.letter.to_owned(), name_class(one.index), middle(one)?))).collect();
     frame.name_ends(joined(if named.is_empty() { ends } else { named }));
     Some(frame.canvas.finish(name, "response", "Gain against frequency with the points 3 dB below 1 kHz"))
 }
@@ -70,7 +68,8 @@ fn between(values: &[Option<(f64, f64)>], frequency: f64) -> Option<f64> {
 pub fn impedances(group: &[Lettered<'_>], name: String) -> Option<Picture> {
     let size = |z: Option<[f64; 2]>| z.map(|[re, im]| libm::hypot(re, im)).filter(|size| *size > 0.0);
     let input = |point: &SweepPointFigures| Some((point.response.frequency, size(point.response.input_impedance)?));
-    let output = |point: &SweepPointFigures| Some((point.response.frequency, size(point.response.output_impedance)?));
+    let output =
+        |point: &SweepPointFigures| Some((point.response.frequency, size(point.response.output_impedance)?));
     let all = || group.iter().flat_map(|one| points(one)).flat_map(|p| [input(p), output(p)]).flatten();
     let (low, high) = (all().map(|p| p.1).fold(f64::INFINITY, f64::min), all().map(|p| p.1).fold(0.0, f64::max));
     let edges = Edges::of(HEIGHT, 74.0, 0.0);
