@@ -60,11 +60,8 @@ fn across(build: &Network) -> Vec<Option<f64>> {
 }
 
 fn band(place: &str, expected: Option<f64>, values: &[f64], advice: Option<String>) -> BandFigures {
-    BandFigures {
-        place: place.to_owned(),
-        expected,
-        low: percentile(values, BAND.0),
-        high: percentile(values, BAND.1),
-        advice,
-    }
+    let mut sorted = values.to_vec();
+    sorted.sort_by(f64::total_cmp);
+    let end = |percent: f64| (!sorted.is_empty()).then(|| percentile(&sorted, percent));
+    BandFigures { place: place.to_owned(), expected, low: end(BAND.0), high: end(BAND.1), advice }
 }

@@ -26,7 +26,7 @@ pub use noise::{Noise, a_weighting, supply_transfer};
 pub use operating_point::{Meter, OperatingPoint, PartStress, TubePoint};
 pub use profile::{NoLevel, Target, Want, distance_db, level_for_output};
 pub use ratings::{Limit, TubeStress, cold_volts, tube_stresses, tube_type};
-pub use scatter::{Scatter, TubeScatter, metered_volts, percentile};
+pub use scatter::{Scatter, TubeScatter, metered_volts};
 pub use small_signal::{Response, SmallSignal};
 pub use steady_state::{NoSteadyState, Period, bins, harmonics, steady_state};
 pub use sweep::{Band, band, frequencies, level_sweep, levels, ripple_rejection_db};

@@ -101,17 +101,6 @@ pub fn metered_volts(build: &Network, nodes: &[Node], meter_ohms: f64) -> Vec<Op
     nodes.iter().map(read).collect()
 }
 
-/// The value below which `percent` of `values` lie, between neighbours by straight line; `None` for no values.
-pub fn percentile(values: &[f64], percent: f64) -> Option<f64> {
-    let mut sorted = values.to_vec();
-    sorted.sort_by(f64::total_cmp);
-    let last = sorted.len().checked_sub(1)?;
-    let place = (percent / 100.0).clamp(0.0, 1.0) * last as f64;
-    let below = place as usize;
-    let above = (below + 1).min(last);
-    Some(sorted[below] + (place - below as f64) * (sorted[above] - sorted[below]))
-}
-
 /// Seeded chance that is the same on every machine.
 struct Chance(u64);
 
@@ -151,15 +140,7 @@ impl Chance {
 #[cfg(test)]
 mod tests {
     use super::*;
-
-    #[test]
-    fn percentiles_of_a_ramp_are_where_a_hand_puts_them() {
-        let ramp: Vec<f64> = (0..=100).rev().map(f64::from).collect();
-        assert_eq!(percentile(&ramp, 5.0), Some(5.0));
-        assert_eq!(percentile(&ramp, 95.0), Some(95.0));
-        assert_eq!(percentile(&[1.0, 2.0], 25.0), Some(1.25));
-        assert_eq!(percentile(&[], 50.0), None);
-    }
+    use crate::analysis::median;
 
     /// The scatter is drawn as it was measured: deviation, ends and the difference within a bottle. Clamping at the ends
     /// takes a little off the deviation.
@@ -174,13 +155,13 @@ mod tests {
         assert!((0.115..0.135).contains(&variance.sqrt()), "{}", variance.sqrt());
         assert!(pairs.iter().flatten().all(|f| (0.74..=1.30).contains(f)));
         let apart: Vec<f64> = pairs.iter().map(|p| (p[0] - p[1]).abs()).collect();
-        let median = percentile(&apart, 50.0).unwrap();
+        let median = median(&apart).unwrap();
         assert!((0.045..0.052).contains(&median), "{median}");
         let strangers: Vec<f64> = (0..20_000)
             .map(|index| scatter.pair(false, &mut Chance::new(7, index)))
             .map(|p| (p[0] - p[1]).abs())
             .collect();
-        assert!(percentile(&strangers, 50.0).unwrap() > 2.0 * median);
+        assert!(median(&strangers).unwrap() > 2.0 * median);
     }
 
     #[test]
@@ -189,6 +170,6 @@ mod tests {
         let draws: Vec<f64> = (0..100_000).map(|_| chance.uniform()).collect();
         let mean = draws.iter().sum::<f64>() / draws.len() as f64;
         assert!((mean - 0.5).abs() < 0.005, "{mean}");
-        assert!((percentile(&draws, 10.0).unwrap() - 0.1).abs() < 0.005);
+        assert!((median(&draws).unwrap() - 0.5).abs() < 0.005);
     }
 }
