@@ -54,6 +54,9 @@ Example:  platewright render stage.toml --play take.wav --into out
     /// Compare the built-in stage on the built-in recording: needs no file
     #[command(after_help = "Example:  platewright demo --into out")]
     Demo(DemoArguments),
+    /// Draw the page of a comparison again, from its report.json alone
+    #[command(after_help = "Example:  platewright report out")]
+    Report(ReportArguments),
 }
 
 /// Arguments of `new`.
@@ -206,6 +209,8 @@ pub struct CompareArguments {
     #[command(flatten)]
     pub units: UnitArguments,
     #[command(flatten)]
+    pub plots: PlotArguments,
+    #[command(flatten)]
     pub sound: SoundArguments,
     #[command(flatten)]
     pub figures: FigureArguments,
@@ -217,7 +222,34 @@ pub struct DemoArguments {
     #[command(flatten)]
     pub into: IntoArguments,
     #[command(flatten)]
+    pub plots: PlotArguments,
+    #[command(flatten)]
     pub figures: FigureArguments,
+}
+
+/// Arguments of `report`.
+#[derive(Debug, Args)]
+pub struct ReportArguments {
+    /// The folder of a comparison, which holds its report.json
+    #[arg(value_name = "FOLDER")]
+    pub folder: PathBuf,
+    #[command(flatten)]
+    pub plots: PlotArguments,
+}
+
+/// Whether the page's pictures are also written as files.
+#[derive(Clone, Copy, Debug, Args)]
+pub struct PlotArguments {
+    /// Write each picture of the page as a file too, into the folder plots
+    #[arg(long, value_name = "FORMAT")]
+    pub plots: Option<PlotFormat>,
+}
+
+/// Formats of pictures.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum PlotFormat {
+    /// Scalable vector graphics
+    Svg,
 }
 
 /// How figures are handed over.

@@ -11,6 +11,7 @@ mod option_values;
 mod plan;
 mod profile;
 mod rendering;
+mod report;
 mod show;
 mod spanned;
 mod stage_file;

@@ -8,7 +8,8 @@ use platewright_dsp::analysis::TonePair;
 
 use crate::cli::{
     Arguments, BiasArguments, Command, CompareArguments, DemoArguments, FigureArguments, IntoArguments,
-    MeasureArguments, RenderArguments, SampleFormat, SoundArguments, SweepKind, Switch, UnitArguments,
+    MeasureArguments, RenderArguments, ReportArguments, SampleFormat, SoundArguments, SweepKind, Switch,
+    UnitArguments,
 };
 use crate::failure::RequestError;
 use crate::iec60062;
@@ -33,6 +34,8 @@ pub enum Plan {
     Listen(ListenPlan),
     /// The same for the built-in stage and recording.
     Demo(DemoPlan),
+    /// The page of a comparison again.
+    Report(ReportPlan),
 }
 
 /// Write an example stage file.
@@ -126,10 +129,21 @@ pub struct ComparePlan {
     pub trust: bool,
     /// How levels are shown.
     pub levels: LevelUnit,
+    /// Whether pictures are written as files too.
+    pub plots: bool,
     /// How sound is rendered.
     pub sound: Sound,
     /// How figures are handed over.
     pub figures: Figures,
+}
+
+/// Draw a page again.
+#[derive(Debug)]
+pub struct ReportPlan {
+    /// The folder that holds report.json.
+    pub folder: PathBuf,
+    /// Whether pictures are written as files too.
+    pub plots: bool,
 }
 
 /// Compare the built-in stage.
@@ -137,6 +151,8 @@ pub struct ComparePlan {
 pub struct DemoPlan {
     /// Where the files go.
     pub into: Into,
+    /// Whether pictures are written as files too.
+    pub plots: bool,
     /// How figures are handed over.
     pub figures: Figures,
 }
@@ -212,8 +228,11 @@ impl Plan {
             Command::Render(render) => Self::Render(RenderPlan::new(render)?),
             Command::Compare(compare) => Self::Compare(ComparePlan::new(compare)?),
             Command::Listen(listen) => Self::Listen(ListenPlan::new(listen)?),
-            Command::Demo(DemoArguments { into, figures }) => {
-                Self::Demo(DemoPlan { into: into.into(), figures: figures.into() })
+            Command::Demo(DemoArguments { into, plots, figures }) => {
+                Self::Demo(DemoPlan { into: into.into(), plots: plots.plots.is_some(), figures: figures.into() })
+            }
+            Command::Report(ReportArguments { folder, plots }) => {
+                Self::Report(ReportPlan { folder, plots: plots.plots.is_some() })
             }
         })
     }
@@ -288,6 +307,7 @@ impl ComparePlan {
             csv: arguments.csv,
             trust: arguments.trust == Switch::On,
             levels: arguments.units.into(),
+            plots: arguments.plots.plots.is_some(),
             sound,
             pack,
             figures: arguments.figures.into(),

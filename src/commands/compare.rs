@@ -7,17 +7,19 @@ use platewright_dsp::analysis::TonePair;
 use super::csv_file::CsvFile;
 use crate::audio_files::{OutputPlan, Recording};
 use crate::failure::{Failure, Outcome};
-use crate::figures::{Asked, AskedTone, Figures, gather};
+use crate::figures::{Asked, AskedTone, Figures, gather, provenance, recording};
 use crate::plan::{self, ComparePlan, LevelUnit};
 use crate::profile::Profile;
 use crate::rendering::{self, Job};
 use crate::stage_file::StageFile;
-use crate::{show, terminal};
+use crate::{report, show, terminal};
 
 /// Figures and curves, as a program reads them.
-const REPORT: &str = "report.json";
+pub const REPORT: &str = "report.json";
 /// The same in a few lines of text.
 const SUMMARY: &str = "summary.txt";
+/// The bench sheet's meter, Ω: what nearly every digital one has.
+const METER: f64 = 10e6;
 /// Tones of the comparison, Hz.
 const TONES: [f64; 3] = [1000.0, 100.0, 10_000.0];
 /// Frequencies of the response, Hz.
@@ -42,6 +44,7 @@ pub fn run(plan: &ComparePlan) -> Result<Outcome, Failure> {
         profile: profile.as_ref(),
         level: plan.level,
         trust: plan.trust,
+        plots: plan.plots,
         levels: plan.levels,
         sound: &plan.sound,
     };
@@ -68,6 +71,8 @@ pub struct Comparison<'a> {
     pub level: Option<f64>,
     /// Whether harmonics carry the spread of equally good tube fits.
     pub trust: bool,
+    /// Whether pictures are written as files too.
+    pub plots: bool,
     /// How levels are shown.
     pub levels: LevelUnit,
     /// How sound is rendered.
@@ -82,7 +87,10 @@ impl Comparison<'_> {
     pub fn run(&self, printed: plan::Figures) -> Result<Outcome, Failure> {
         let job = Job::new(&self.file.configurations, self.recordings, self.sound, super::kernel())?;
         let mut files: Vec<PathBuf> = job.files().cloned().collect();
-        files.extend([REPORT, SUMMARY].map(PathBuf::from));
+        files.extend([REPORT, report::PAGE, SUMMARY].map(PathBuf::from));
+        if self.plots {
+            files.extend(report::plot_files(self.file.configurations.len(), self.recordings.len()));
+        }
         files.extend(self.extras.iter().map(|(name, _)| PathBuf::from(name)));
         let outputs = OutputPlan::check(&self.into.folder, self.into.replace, &files, self.inputs)?;
         let targets: Vec<PathBuf> = outputs.targets().collect();
@@ -94,7 +102,12 @@ impl Comparison<'_> {
         let warnings = rendering::warnings(&renders);
         let tables = summary(&figures, &show::renders(&renders), self.levels);
         figures.renders = Some(renders);
-        staged.push(folder.stage_contents(REPORT, (figures.to_json()? + "\n").as_bytes())?);
+        figures.recordings = Some(self.recordings.iter().map(recording::of).collect::<Result<_, _>>()?);
+        figures.provenance = Some(provenance::of(self.file, self.options()));
+        let json = figures.to_json()? + "\n";
+        let page = report::draw(REPORT, &json)?;
+        staged.push(folder.stage_contents(REPORT, json.as_bytes())?);
+        staged.extend(page.staged(&folder, self.plots)?);
         staged.push(folder.stage_contents(SUMMARY, self.summary_file(&figures, &tables).as_bytes())?);
         for (name, contents) in self.extras {
             staged.push(folder.stage_contents(name, contents)?);
@@ -126,8 +139,45 @@ impl Comparison<'_> {
             headroom: true,
             profile: self.profile.cloned(),
             play_peak: Some(super::true_peak(self.recordings)?),
+            meter_ohms: Some(METER),
+            page: true,
             ..Asked::default()
         })
+    }
+
+    /// What was asked, in words and without a path.
+    fn options(&self) -> Vec<[String; 2]> {
+        let sound = self.sound;
+        let mut options = Vec::new();
+        let mut option = |name: &str, value: String| options.push([name.to_owned(), value]);
+        option(
+            "Level of the figures",
+            match self.level {
+                Some(volts) => format!("{volts} V rms"),
+                None => "a quarter of full scale".to_owned(),
+            },
+        );
+        option("Sample format", format!("{:?}", sound.format).to_lowercase());
+        option(
+            "Oversampling",
+            sound.oversample.map_or_else(|| "by the rate".to_owned(), |times| format!("{times} times")),
+        );
+        if let Some(rate) = sound.rate {
+            option("Sample rate", format!("{rate} Hz"));
+        }
+        if sound.drive != 0.0 {
+            option("Drive", format!("{} dB", sound.drive));
+        }
+        if sound.tail != 0.0 {
+            option("Tail", format!("{} s", sound.tail));
+        }
+        if sound.dither {
+            option("Dither", "triangular".to_owned());
+        }
+        if let Some(volts) = sound.full_scale {
+            option("0 dBFS at the output", format!("{volts} V rms"));
+        }
+        options
     }
 
     fn summary_file(&self, figures: &Figures, tables: &[String]) -> String {

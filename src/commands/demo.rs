@@ -36,6 +36,7 @@ pub fn run(plan: &DemoPlan) -> Result<Outcome, Failure> {
         profile: None,
         level: None,
         trust: true,
+        plots: plan.plots,
         levels: LevelUnit::default(),
         sound: &Sound::default(),
     };

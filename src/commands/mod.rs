@@ -11,6 +11,7 @@ mod listen_tally;
 mod measure;
 mod new;
 mod render;
+mod report;
 
 use std::path::{Path, PathBuf};
 
@@ -40,6 +41,7 @@ pub fn run(plan: &Plan) -> Result<Outcome, Failure> {
         Plan::Compare(plan) => compare::run(plan),
         Plan::Listen(plan) => listen::run(plan),
         Plan::Demo(plan) => demo::run(plan),
+        Plan::Report(plan) => report::run(plan),
     }
 }
 

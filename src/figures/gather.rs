@@ -6,8 +6,8 @@ use rayon::prelude::*;
 
 use super::tone::Trust;
 use super::{
-    ConfigurationFigures, Figures, SCHEMA, ToneFigures, headroom, imd, law, noise, point, profile, sweep, tone,
-    undecided,
+    ConfigurationFigures, Figures, SCHEMA, ToneFigures, curves, headroom, imd, law, noise, point, profile, sheet,
+    sweep, tone, undecided, values,
 };
 use crate::failure::{Failure, WorkError};
 use crate::profile::Profile;
@@ -40,6 +40,8 @@ pub struct Asked {
     pub play_peak: Option<f64>,
     /// Input resistance of a meter to hold to every node, Ω.
     pub meter_ohms: Option<f64>,
+    /// Whether a page is to be drawn: the stage's values, curves and, with a meter, the bench sheet.
+    pub page: bool,
 }
 
 /// A tone that is asked.
@@ -63,7 +65,8 @@ pub fn gather(file: &StageFile, asked: &Asked) -> Result<Figures, Failure> {
         file.configurations.par_iter().map(|configuration| one(configuration, asked)).collect();
     let configurations = configurations?;
     let undecided = undecided::of(&configurations);
-    Ok(Figures { schema: SCHEMA, title: file.title.clone(), configurations, undecided, renders: None })
+    let (schema, title) = (SCHEMA, file.title.clone());
+    Ok(Figures { schema, title, configurations, undecided, renders: None, recordings: None, provenance: None })
 }
 
 fn one(configuration: &Configuration, asked: &Asked) -> Result<ConfigurationFigures, Failure> {
@@ -84,9 +87,15 @@ fn one(configuration: &Configuration, asked: &Asked) -> Result<ConfigurationFigu
     let tones: Option<Vec<ToneFigures>> = asked.tones.as_ref().map(|t| t.par_iter().map(tone).collect());
     let pair = |&pair: &TonePair| imd::of(&network, pair, level(asked.level));
     let first_tone = tones.as_ref().and_then(|t| t.first());
+    let stage = &configuration.stage;
+    let operating_point = point::operating_point(configuration, &network, &at_rest, asked.meter_ohms);
+    let meter = operating_point.meter.as_ref().filter(|_| asked.page);
     Ok(ConfigurationFigures {
         name: configuration.name.clone(),
-        operating_point: point::operating_point(configuration, &network, &at_rest, asked.meter_ohms),
+        values: asked.page.then(|| values::of(stage)),
+        curves: asked.page.then(|| curves::of(stage, &network, &at_rest, level(asked.level))),
+        bench_sheet: meter.map(|meter| sheet::of(stage, &network, &at_rest, meter)),
+        operating_point,
         response: asked.frequencies.as_ref().map(response),
         level_sweep: asked.level_sweep.then(|| sweep::over_level(&network, full_scale)),
         frequency_sweep: asked

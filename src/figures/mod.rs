@@ -4,6 +4,8 @@
 
 mod bench;
 mod csv;
+mod curves;
+mod drawn;
 mod gather;
 mod headroom;
 mod imd;
@@ -11,15 +13,20 @@ mod law;
 mod noise;
 mod point;
 mod profile;
+pub mod provenance;
+pub mod recording;
+mod sheet;
 mod sweep;
 mod tone;
 mod undecided;
+mod values;
 
 use std::collections::BTreeMap;
 
 use serde::{Deserialize, Serialize};
 
 pub use bench::*;
+pub use drawn::*;
 pub use gather::{Asked, AskedTone, gather};
 
 use crate::failure::{Failure, WorkError};
@@ -46,6 +53,12 @@ pub struct Figures {
     /// Rendered files, where there are any.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub renders: Option<Vec<RenderFigures>>,
+    /// What was played, where a page is to be drawn.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub recordings: Option<Vec<RecordingFigures>>,
+    /// Where the figures come from, where a page is to be drawn.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub provenance: Option<ProvenanceFigures>,
 }
 
 impl Figures {
@@ -112,6 +125,15 @@ pub struct ConfigurationFigures {
     /// A target profile's misses, when asked.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub profile: Option<ProfileFigures>,
+    /// The stage's values, where a page is to be drawn.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub values: Option<ValuesFigures>,
+    /// Curves, where a page is to be drawn.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub curves: Option<CurvesFigures>,
+    /// Readings for the bench, where a page is to be drawn.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub bench_sheet: Option<BenchSheetFigures>,
 }
 
 impl ConfigurationFigures {

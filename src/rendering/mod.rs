@@ -66,6 +66,9 @@ pub struct RenderFigures {
     /// That peak in the file; `null` for silence.
     #[serde(rename = "peak_dBFS")]
     pub peak_dbfs: Option<f64>,
+    /// Integrated loudness of the file (ITU-R BS.1770-4); `null` where nothing rises above −70 LUFS.
+    #[serde(rename = "loudness_LUFS", default)]
+    pub loudness_lufs: Option<f64>,
     /// Samples beyond 0 dBFS: clipped in integer formats, kept in float.
     pub over_full_scale: u64,
     /// Newton steps of the engine's root a step, on average.

@@ -4,7 +4,7 @@ use std::path::PathBuf;
 
 use platewright_dsp::Kernel;
 use platewright_dsp::portable::{decibels, ratio};
-use platewright_dsp::signal::{Oversampling, Resampler, TriangularDither};
+use platewright_dsp::signal::{LoudnessMeter, Oversampling, Resampler, TriangularDither};
 
 use super::lanes::Lanes;
 use super::level::Level;
@@ -114,7 +114,8 @@ impl<'a> Passage<'a> {
         let wav = WavOutput::new(file, format, channels, self.sample_rate(), self.file_frames()?)?;
         let dithered = if self.sound.dither { channels } else { 0 };
         let dither = (0..dithered).map(TriangularDither::for_channel).collect();
-        Ok(ScaledFile { wav, scale, dither, step: format.step() })
+        let loudness = LoudnessMeter::new(channels, self.sample_rate()).ok();
+        Ok(ScaledFile { wav, scale, dither, step: format.step(), loudness })
     }
 
     fn sink(&self, folder: &OutputFolder, configuration: usize) -> Result<Sink, Failure> {
@@ -195,6 +196,8 @@ struct ScaledFile {
     /// One a channel, where dither is wanted.
     dither: Vec<TriangularDither>,
     step: f64,
+    /// None where the file has more channels than loudness is defined for.
+    loudness: Option<LoudnessMeter>,
 }
 
 impl ScaledFile {
@@ -202,6 +205,9 @@ impl ScaledFile {
         channels.iter_mut().flatten().for_each(|volts| *volts *= self.scale);
         for (dither, channel) in self.dither.iter_mut().zip(channels.iter_mut()) {
             dither.add(channel, self.step);
+        }
+        if let Some(meter) = &mut self.loudness {
+            meter.add(channels);
         }
         Ok(self.wav.write(channels)?)
     }
@@ -237,6 +243,7 @@ impl Passed<'_> {
                     file
                 }
             };
+            let loudness = file.loudness.and_then(LoudnessMeter::finish);
             let (staged, levels) = file.wav.finish()?;
             let written = Written {
                 frames: passage.file_frames()?,
@@ -244,6 +251,7 @@ impl Passed<'_> {
                 peak_volts: sink.peak_volts,
                 over_full_scale: levels.over_full_scale,
                 input_peak,
+                loudness,
             };
             hand_over(staged, passage.figures(configuration, &written));
         }
@@ -260,6 +268,8 @@ struct Written {
     over_full_scale: u64,
     /// The recording's largest sample.
     input_peak: f64,
+    /// Of the file, LUFS.
+    loudness: Option<f64>,
 }
 
 impl Passage<'_> {
@@ -284,6 +294,7 @@ impl Passage<'_> {
             oversampling: times,
             full_scale_rms: 1.0 / (written.scale * std::f64::consts::SQRT_2),
             peak_volts: written.peak_volts,
+            loudness_lufs: written.loudness,
             peak_dbfs: (written.peak_volts > 0.0).then(|| decibels(written.peak_volts * written.scale)),
             over_full_scale: written.over_full_scale,
             newton_per_step: counts.newton as f64 / steps,

@@ -115,7 +115,7 @@ fn parts(point: &OperatingPointFigures) -> String {
 }
 
 /// The next rating that is sold, with the usual margin.
-fn suggested(part: &PartFigures) -> String {
+pub fn suggested(part: &PartFigures) -> String {
     let (needed, sold, unit) = match part.volts_cold {
         Some(cold) => (CAPACITOR_MARGIN * part.volts.max(cold), &SOLD_VOLTS[..], "V"),
         None => (RESISTOR_MARGIN * part.watts, &SOLD_WATTS[..], "W"),

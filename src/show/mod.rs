@@ -13,7 +13,7 @@ mod warnings;
 use crate::figures::ConfigurationFigures;
 use crate::plan::LevelUnit;
 
-pub use bench_sheet::bench_sheet;
+pub use bench_sheet::{bench_sheet, suggested};
 pub use figures::{at_a_glance, meter_advice, operating_points};
 pub use renders::renders;
 pub use side_by_side::SideBySide;

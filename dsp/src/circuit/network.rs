@@ -181,6 +181,15 @@ impl Network {
         self.places[node as usize]
     }
 
+    /// Multiplies every constant voltage, as a supply that is off its value would.
+    pub(crate) fn scale_supply(&mut self, factor: f64) {
+        for source in &mut self.sources {
+            if let Drive::Constant(volts) = &mut source.drive {
+                *volts *= factor;
+            }
+        }
+    }
+
     /// The signal's index among the sources is 0; this is the constant voltage of source `index`, 0 for the signal.
     pub fn constant_volts(&self, index: usize) -> f64 {
         match self.sources[index].drive {

@@ -119,6 +119,63 @@ impl LevelMeter {
     }
 }
 
+/// Loudness alone by ITU-R BS.1770-4, over blocks as they come: what a [`LevelMeter`] reads, for less work.
+pub struct LoudnessMeter {
+    loudness: EbuR128,
+    resamplers: Vec<Resampler>,
+    resampled: Vec<Vec<f64>>,
+    interleaved: Vec<f64>,
+}
+
+impl LoudnessMeter {
+    /// A meter for planes of samples.
+    ///
+    /// # Errors
+    /// No channels or more than 64, or a sample rate outside 8 to 192 kHz.
+    pub fn new(channels: usize, sample_rate: u32) -> Result<Self, BadMeter> {
+        let bad = BadMeter { channels, sample_rate };
+        let count = u32::try_from(channels).map_err(|_| bad)?;
+        // At the filters' own rate there is nothing to resample.
+        let needed = if sample_rate == LOUDNESS_RATE { 0 } else { channels };
+        let resampler = Resampler::new(sample_rate, LOUDNESS_RATE, Kernel::detect()).map_err(|_| bad)?;
+        Ok(LoudnessMeter {
+            loudness: EbuR128::new(count, LOUDNESS_RATE, Mode::I).map_err(|_| bad)?,
+            resamplers: vec![resampler; needed],
+            resampled: vec![Vec::new(); channels],
+            interleaved: Vec::new(),
+        })
+    }
+
+    /// Takes a block, one plane a channel.
+    ///
+    /// # Panics
+    /// If the number of planes is not the meter's, or they differ in length.
+    pub fn add(&mut self, planes: &[impl AsRef<[f64]>]) {
+        assert_eq!(planes.len(), self.resampled.len(), "one plane a channel");
+        if self.resamplers.is_empty() {
+            return feed(&mut self.loudness, planes, &mut self.interleaved);
+        }
+        for ((resampler, plane), output) in self.resamplers.iter_mut().zip(planes).zip(&mut self.resampled) {
+            output.clear();
+            resampler.process(plane.as_ref(), output);
+        }
+        feed(&mut self.loudness, &self.resampled, &mut self.interleaved);
+    }
+
+    /// Integrated loudness in LUFS, in steps of 0.001; none where no 0.4 s rise above −70 LUFS.
+    pub fn finish(mut self) -> Option<f64> {
+        if !self.resamplers.is_empty() {
+            for (resampler, output) in self.resamplers.iter_mut().zip(&mut self.resampled) {
+                output.clear();
+                resampler.finish(output);
+            }
+            feed(&mut self.loudness, &self.resampled, &mut self.interleaved);
+        }
+        let loudness = self.loudness.loudness_global().ok().filter(|loudness| loudness.is_finite());
+        loudness.map(|loudness| (loudness * 1e3).round() / 1e3)
+    }
+}
+
 fn feed(meter: &mut EbuR128, planes: &[impl AsRef<[f64]>], interleaved: &mut Vec<f64>) {
     interleaved.clear();
     for frame in 0..planes[0].as_ref().len() {
@@ -145,7 +202,14 @@ mod tests {
             let end = (start + 1000).min(planes[0].len());
             meter.add(&planes.iter().map(|plane| &plane[start..end]).collect::<Vec<_>>());
         }
-        meter.finish().loudness
+        let read = meter.finish().loudness;
+        let mut alone = LoudnessMeter::new(planes.len(), rate).unwrap();
+        alone.add(planes);
+        match (read, alone.finish()) {
+            (Some(a), Some(b)) => assert!((a - b).abs() < 0.002, "{a} {b}"),
+            (a, b) => assert_eq!(a, b),
+        }
+        read
     }
 
     /// ITU-R BS.1770-4: a 997 Hz sine at 0 dBFS in one front channel reads −3.01 LUFS.
