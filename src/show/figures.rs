@@ -173,7 +173,7 @@ pub fn tones(configurations: &[ConfigurationFigures], unit: LevelUnit) -> Option
     for index in 0..count {
         let each = || configurations.iter().map(move |c| c.tones.as_ref().and_then(|t| t.get(index)));
         let Some(first) = each().flatten().next() else { continue };
-        table.heading(&format!("{} at {} rms", units::hertz(first.frequency), units::level(first.input_rms, unit)));
+        table.heading(&format!("{}, {} rms", units::hertz(first.frequency), units::level(first.input_rms, unit)));
         table.row("gain", each().map(|t| t.map(|t| or_dash(t.gain_db, units::decibels))));
         table
             .row("output", each().map(|t| t.map(|t| or_dash(t.output_fundamental_rms, |v| units::level(v, unit)))));
@@ -230,8 +230,8 @@ pub fn at_a_glance(configurations: &[ConfigurationFigures], unit: LevelUnit) -> 
     let mut table = table(configurations);
     let tone = || configurations.iter().map(|c| c.tones.as_ref().and_then(|t| t.first()));
     if let Some(first) = tone().flatten().next() {
-        let at = format!("{} at {} rms", units::hertz(first.frequency), units::level(first.input_rms, unit));
-        table.heading(&format!("At a glance, {at}"));
+        let at = format!("{}, {} rms", units::hertz(first.frequency), units::level(first.input_rms, unit));
+        table.heading(&at);
     }
     table.row("gain", tone().map(|t| t.and_then(|t| t.gain_db).map(units::decibels)));
     table.row("THD_F", tone().map(|t| t.and_then(|t| t.thd_percent).map(units::percent)));
