@@ -4,11 +4,13 @@ pub mod fitting;
 mod law;
 pub mod library;
 mod lookup;
+mod numbers;
 mod spline;
 mod table;
 mod tube;
 
 pub use law::{Currents, DempwolfZoelzer, GridLaw, Koren, Law, ThreeSection, TwoSection};
 pub(crate) use lookup::Lookup;
-pub(crate) use table::{LaneCurrents, LawKind, Tables, TabulatedSection, TubeNumbers, currents, gather};
+pub(crate) use numbers::{TubeNumbers, gather};
+pub(crate) use table::{LaneCurrents, LawKind, Tables, TabulatedSection, currents};
 pub use tube::{Capacitances, Heater, Limits, Section, TubeType};

@@ -8,9 +8,10 @@ use std::sync::Arc;
 
 use super::law::softplus;
 use super::lookup::{Lookup, Which, cubic};
+use super::numbers::TubeNumbers;
 use super::spline::Cells;
 use super::{Currents, GridLaw, Law, Section, TwoSection};
-use crate::lanes::{F64x4, LANES};
+use crate::lanes::F64x4;
 
 /// z below which ln(1+e^z)^γ is 0 to a double beside its value in use: e^−36 is 2·10⁻¹⁶.
 const Z_LOW: f64 = -36.0;
@@ -55,102 +56,6 @@ pub(crate) enum LawKind {
     ThreeSection,
     DempwolfZoelzer,
     Koren,
-}
-
-/// Numbers of one tube as the tabulated laws use them, folded so that a step multiplies as little as it can.
-///
-/// A *place* is a table's coordinate, counted in cells.
-#[derive(Clone, Copy, Debug, Default)]
-pub(crate) struct TubeNumbers<V> {
-    /// Place of the first section by vpk, by vgk (Koren: by vgk/√(Kvb+vpk²)), and its constant part.
-    by_vpk: V,
-    by_vgk: V,
-    constant: V,
-    /// Place of the second and third section by vpk.
-    second_by_vpk: V,
-    third_by_vpk: V,
-    /// Amperes of a section by its table's value.
-    weight: V,
-    second_weight: V,
-    third_weight: V,
-    /// Siemens by vgk of a section by its table's slope.
-    slope_weight: V,
-    second_slope_weight: V,
-    third_slope_weight: V,
-    /// 1/µ of each section: its slope by vpk over that by vgk.
-    inverse_mu: V,
-    second_inverse_mu: V,
-    third_inverse_mu: V,
-    /// knee³ (Koren: Kvb), and three times that.
-    knee_cubed: V,
-    thrice_knee_cubed: V,
-    grid_by_vgk: V,
-    grid_weight: V,
-    grid_slope_weight: V,
-    grid_constant: V,
-    /// The last cell of each table.
-    plate_last: V,
-    grid_last: V,
-}
-
-impl<V> TubeNumbers<V> {
-    /// The same numbers in another form.
-    #[inline(always)]
-    pub fn map<W>(&self, f: impl Fn(&V) -> W) -> TubeNumbers<W> {
-        TubeNumbers {
-            by_vpk: f(&self.by_vpk),
-            by_vgk: f(&self.by_vgk),
-            constant: f(&self.constant),
-            second_by_vpk: f(&self.second_by_vpk),
-            third_by_vpk: f(&self.third_by_vpk),
-            weight: f(&self.weight),
-            second_weight: f(&self.second_weight),
-            third_weight: f(&self.third_weight),
-            slope_weight: f(&self.slope_weight),
-            second_slope_weight: f(&self.second_slope_weight),
-            third_slope_weight: f(&self.third_slope_weight),
-            inverse_mu: f(&self.inverse_mu),
-            second_inverse_mu: f(&self.second_inverse_mu),
-            third_inverse_mu: f(&self.third_inverse_mu),
-            knee_cubed: f(&self.knee_cubed),
-            thrice_knee_cubed: f(&self.thrice_knee_cubed),
-            grid_by_vgk: f(&self.grid_by_vgk),
-            grid_weight: f(&self.grid_weight),
-            grid_slope_weight: f(&self.grid_slope_weight),
-            grid_constant: f(&self.grid_constant),
-            plate_last: f(&self.plate_last),
-            grid_last: f(&self.grid_last),
-        }
-    }
-}
-
-/// Four lanes' numbers beside each other.
-pub(crate) fn gather(lanes: [&TubeNumbers<f64>; LANES]) -> TubeNumbers<F64x4> {
-    let pick = |field: fn(&TubeNumbers<f64>) -> f64| F64x4(lanes.map(field));
-    TubeNumbers {
-        by_vpk: pick(|n| n.by_vpk),
-        by_vgk: pick(|n| n.by_vgk),
-        constant: pick(|n| n.constant),
-        second_by_vpk: pick(|n| n.second_by_vpk),
-        third_by_vpk: pick(|n| n.third_by_vpk),
-        weight: pick(|n| n.weight),
-        second_weight: pick(|n| n.second_weight),
-        third_weight: pick(|n| n.third_weight),
-        slope_weight: pick(|n| n.slope_weight),
-        second_slope_weight: pick(|n| n.second_slope_weight),
-        third_slope_weight: pick(|n| n.third_slope_weight),
-        inverse_mu: pick(|n| n.inverse_mu),
-        second_inverse_mu: pick(|n| n.second_inverse_mu),
-        third_inverse_mu: pick(|n| n.third_inverse_mu),
-        knee_cubed: pick(|n| n.knee_cubed),
-        thrice_knee_cubed: pick(|n| n.thrice_knee_cubed),
-        grid_by_vgk: pick(|n| n.grid_by_vgk),
-        grid_weight: pick(|n| n.grid_weight),
-        grid_slope_weight: pick(|n| n.grid_slope_weight),
-        grid_constant: pick(|n| n.grid_constant),
-        plate_last: pick(|n| n.plate_last),
-        grid_last: pick(|n| n.grid_last),
-    }
 }
 
 /// A section with its tables.
@@ -373,6 +278,8 @@ fn koren<V: Lookup>(n: &TubeNumbers<V>, tables: V::Tables<'_>, vgk: V, vpk: V) -
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::lanes::LANES;
+    use crate::triode::gather;
     use crate::triode::{DempwolfZoelzer, Koren, ThreeSection};
 
     fn sections() -> [Section; 4] {

@@ -1,6 +1,7 @@
 //! The wave digital filter: ports, adaptor, modes, root, and the engine that steps them.
 
 mod adaptor;
+mod coefficients;
 mod engine;
 mod machine;
 mod modes;

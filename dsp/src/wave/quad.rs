@@ -4,13 +4,14 @@
 //! that linearisation, so that Kirchhoff's laws hold exactly whatever the laws' tables say. A lane whose correction was
 //! not small goes on by its own test, so that its bits never depend on its neighbours.
 
+use super::coefficients::{Coefficients, coefficients};
 use super::machine::Machine;
 use super::root::{self, RootCounts};
 #[cfg(target_arch = "x86_64")]
 use crate::lanes::avx2::Avx2x4;
 use crate::lanes::{F64x4, FourLanes, LANES};
 use crate::linear::Matrix;
-use crate::triode::{LaneCurrents, LawKind, Lookup, Tables, TubeNumbers, currents, gather};
+use crate::triode::{LaneCurrents, LawKind, Lookup, Tables, currents};
 
 /// A correction below this many volts at every port ends a lane's Newton steps.
 pub(crate) const SMALL_CORRECTION: f64 = 1e-3;
@@ -18,25 +19,6 @@ pub(crate) const SMALL_CORRECTION: f64 = 1e-3;
 const PLAIN_STEPS: usize = 12;
 /// Volts to which the damped solver works.
 const DAMPED_TOLERANCE: f64 = 1e-6;
-
-/// Coefficients of four lanes; see `Modes` for what each one means.
-#[derive(Clone)]
-struct Coefficients<const PORTS: usize, const MODES: usize> {
-    eigenvalue: [F64x4; MODES],
-    mode_by_signal: [F64x4; MODES],
-    mode_constant: [F64x4; MODES],
-    mode_by_current: [[F64x4; PORTS]; MODES],
-    root_by_mode: [[F64x4; MODES]; PORTS],
-    root_by_signal: [F64x4; PORTS],
-    root_constant: [F64x4; PORTS],
-    /// What a current takes from the root's voltages: −(`root_by_current`), Ω.
-    resistance: [[F64x4; PORTS]; PORTS],
-    output_by_mode: [F64x4; MODES],
-    output_by_signal: F64x4,
-    output_constant: F64x4,
-    output_by_current: [F64x4; PORTS],
-    tubes: [TubeNumbers<F64x4>; 2],
-}
 
 /// What changes from step to step: mode amplitudes, and the root's voltages of the last three steps, newest first.
 #[derive(Clone, Copy)]
@@ -183,31 +165,6 @@ impl<const PORTS: usize, const MODES: usize> Step for Quad<PORTS, MODES> {
 
     fn root_volts(&self, lane: usize) -> Vec<f64> {
         self.state.volts[0].iter().map(|v| v.0[lane]).collect()
-    }
-}
-
-fn coefficients<const PORTS: usize, const MODES: usize>(machines: &[Machine; LANES]) -> Coefficients<PORTS, MODES> {
-    let each = |f: &dyn Fn(&Machine) -> f64| F64x4([0, 1, 2, 3].map(|lane| f(&machines[lane])));
-    // Absent modes have no amplitude, no drive and no effect.
-    let mode =
-        |k: usize, f: &dyn Fn(&Machine) -> f64| each(&|m: &Machine| if k < m.modes.count() { f(m) } else { 0.0 });
-    let tube =
-        |tube: usize| gather([0, 1, 2, 3].map(|lane| &machines[lane].tubes[tube.min(PORTS / 2 - 1)].numbers));
-    use std::array::from_fn;
-    Coefficients {
-        eigenvalue: from_fn(|k| mode(k, &|m| m.modes.eigenvalue[k])),
-        mode_by_signal: from_fn(|k| mode(k, &|m| m.modes.mode_by_signal[k])),
-        mode_constant: from_fn(|k| mode(k, &|m| m.modes.mode_constant[k])),
-        mode_by_current: from_fn(|k| from_fn(|p| mode(k, &|m| m.modes.mode_by_current[(k, p)]))),
-        root_by_mode: from_fn(|p| from_fn(|k| mode(k, &|m| m.modes.root_by_mode[(p, k)]))),
-        root_by_signal: from_fn(|p| each(&|m| m.modes.root_by_signal[p])),
-        root_constant: from_fn(|p| each(&|m| m.modes.root_constant[p])),
-        resistance: from_fn(|p| from_fn(|q| each(&|m| -m.modes.root_by_current[(p, q)]))),
-        output_by_mode: from_fn(|k| mode(k, &|m| m.modes.output_by_mode[k])),
-        output_by_signal: each(&|m| m.modes.output_by_signal),
-        output_constant: each(&|m| m.modes.output_constant),
-        output_by_current: from_fn(|p| each(&|m| m.modes.output_by_current[p])),
-        tubes: from_fn(tube),
     }
 }
 
