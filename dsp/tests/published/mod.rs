@@ -110,7 +110,7 @@ impl Coupled {
     pub fn network(&self, tube: &Arc<TubeType>) -> Network {
         let bypass = Bypass { capacitance: 1e-2, esr: 0.0, engaged: self.bypassed, trickle_resistor: None };
         let stage = Stage {
-            supply: Supply { voltage: self.supply, resistance: 1.0, reservoir: 1e-2 },
+            supply: Supply { voltage: self.supply, resistance: 1.0, reservoir: 1e-2, ripple: None },
             source: Source { resistance: 1.0, full_scale: 1.0 },
             input: Input { pot: None, grid_leak: Some(1e6), grid_stopper: 0.0 },
             gain: Gain {
