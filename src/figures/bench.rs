@@ -163,6 +163,12 @@ pub struct HeadroomFigures {
     pub grid_current: LimitFigures,
     /// Either tube's least plate current falls below 1 % of idle.
     pub cutoff: LimitFigures,
+    /// Grid current of each tube, gain tube first.
+    #[serde(default)]
+    pub grid_current_of: Vec<LimitFigures>,
+    /// Cut-off of each tube, gain tube first.
+    #[serde(default)]
+    pub cutoff_of: Vec<LimitFigures>,
 }
 
 /// One limit.

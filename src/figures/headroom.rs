@@ -25,12 +25,17 @@ pub fn of(network: &Network, point: &OperatingPoint, full_scale: f64, play_peak:
         Bound::CutOff(role) => Some(*role),
         _ => None,
     };
+    let each = |choose: fn(&Bound) -> Option<Role>| {
+        all.iter().filter(|r| choose(&r.bound).is_some()).map(|r| limit(r, full_scale, play_peak)).collect()
+    };
     let compression = all.iter().find(|r| r.bound == Bound::Compression).map(show);
     HeadroomFigures {
         thd: all.iter().filter(|r| matches!(r.bound, Bound::Thd(_))).map(show).collect(),
         compression_1db: compression.unwrap_or_else(empty),
         grid_current: lowest(grid).unwrap_or_else(empty),
         cutoff: lowest(cut).unwrap_or_else(empty),
+        grid_current_of: each(grid),
+        cutoff_of: each(cut),
     }
 }
 
@@ -53,10 +58,6 @@ fn limit(reached: &Reached, full_scale: f64, play_peak: Option<f64>) -> LimitFig
             figures.over_play_db = peak.map(|peak| hundredths(over - decibels(peak)));
         }
         Err(reason) => {
-            // Which tube would reach it first is not known when none does.
-            if reason != NotReached::AtRest {
-                figures.tube = None;
-            }
             for key in ["input_rms", "output_rms", "over_full_scale_dB"] {
                 figures.why.insert(key.to_owned(), reason.to_string());
             }

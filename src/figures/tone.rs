@@ -66,7 +66,7 @@ fn measured(tone: &Tone) -> ToneFigures {
     if figures.output_fundamental_rms.is_none() {
         explain(&mut figures, "the fundamental did not settle as the steps were made finer");
     } else if figures.thd_percent.is_none() {
-        let reason = "no harmonic stands above what double precision keeps";
+        let reason = "a harmonic did not settle as the steps were made finer, or none stands above -220 dBc";
         figures.why.extend(["thd_percent", "thd_r_percent"].map(|key| (key.to_owned(), reason.to_owned())));
     }
     figures

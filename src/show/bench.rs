@@ -26,16 +26,16 @@ pub fn intermodulation(configurations: &[ConfigurationFigures], unit: LevelUnit)
 }
 
 /// Noise; `None` where none was asked.
-pub fn noise(configurations: &[ConfigurationFigures]) -> Option<SideBySide> {
+pub fn noise(configurations: &[ConfigurationFigures], unit: LevelUnit) -> Option<SideBySide> {
     configurations.iter().find_map(|c| c.noise.as_ref())?;
     let mut table = table(configurations);
     table.heading("Noise, 20 Hz to 20 kHz");
     let mut row = |label: &str, figure: &dyn Fn(&NoiseFigures) -> Option<String>| {
         table.row(label, configurations.iter().map(|c| c.noise.as_ref().map(|n| or(figure(n)))));
     };
-    row("output", &|n| n.output_rms.map(units::volts));
-    row("output, A", &|n| n.output_rms_a.map(units::volts));
-    row("at the input", &|n| n.input_rms.map(units::volts));
+    row("output", &|n| n.output_rms.map(|v| units::level(v, unit)));
+    row("output, A", &|n| n.output_rms_a.map(|v| units::level(v, unit)));
+    row("at the input", &|n| n.input_rms.map(|v| units::level(v, unit)));
     row("signal to noise", &|n| n.signal_to_noise_db.map(|db| format!("{db:.1} dB")));
     let mut optional = |label: &str, figure: &dyn Fn(&NoiseFigures) -> Option<String>| {
         let of = |c: &ConfigurationFigures| c.noise.as_ref().and_then(figure);
@@ -66,8 +66,15 @@ pub fn headroom(configurations: &[ConfigurationFigures], unit: LevelUnit) -> Opt
         limit_rows(&mut table, name, all.iter().map(|h| h.map(of)).collect(), unit);
     };
     named("gain −1 dB", |h| &h.compression_1db);
-    named("grid current", |h| &h.grid_current);
-    named("cut-off", |h| &h.cutoff);
+    for (what, of) in [("grid current", (|h| &h.grid_current_of) as fn(&HeadroomFigures) -> &Vec<LimitFigures>), ("cut-off", |h| &h.cutoff_of)] {
+        for tube in ["gain", "follower"] {
+            let limits: Vec<_> = all
+                .iter()
+                .map(|h| h.and_then(|h| of(h).iter().find(|l| l.tube.as_deref() == Some(tube))))
+                .collect();
+            limit_rows(&mut table, &format!("{what} {}", if tube == "gain" { "1" } else { "2" }), limits, unit);
+        }
+    }
     Some(table)
 }
 
@@ -81,12 +88,9 @@ fn limit_rows(table: &mut SideBySide, name: &str, limits: Vec<Option<&LimitFigur
     if limits.iter().flatten().any(|l| l.over_play_db.is_some()) {
         row("  over the peak", &|l| l.over_play_db.map(|db| format!("{db:+.2} dB")));
     }
-    if limits.iter().flatten().any(|l| l.tube.is_some()) {
-        row("  by", &|l| l.tube.clone());
-    }
 }
 
-/// The level sweep, every fourth level; `None` where none was asked.
+/// The level sweep, every third level; `None` where none was asked.
 pub fn level_sweep(configurations: &[ConfigurationFigures], unit: LevelUnit) -> Option<SideBySide> {
     let first = configurations.iter().find_map(|c| c.level_sweep.as_ref())?;
     let mut table = table(configurations);
@@ -101,7 +105,7 @@ pub fn level_sweep(configurations: &[ConfigurationFigures], unit: LevelUnit) -> 
     Some(table)
 }
 
-/// The frequency sweep's edges and a point an octave; `None` where none was asked.
+/// The frequency sweep's edges and two points a decade; `None` where none was asked.
 pub fn frequency_sweep(configurations: &[ConfigurationFigures]) -> Option<SideBySide> {
     let first = configurations.iter().find_map(|c| c.frequency_sweep.as_ref())?;
     let mut table = table(configurations);

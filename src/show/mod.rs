@@ -37,7 +37,7 @@ pub fn measured(configurations: &[ConfigurationFigures], unit: LevelUnit) -> Vec
         figures::tones(configurations, unit),
         bench::intermodulation(configurations, unit),
         bench::headroom(configurations, unit),
-        bench::noise(configurations),
+        bench::noise(configurations, unit),
         figures::responses(configurations),
         bench::frequency_sweep(configurations),
         bench::level_sweep(configurations, unit),

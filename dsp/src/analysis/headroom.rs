@@ -1,10 +1,10 @@
 //! How far a tone may be raised before the stage distorts, compresses, draws grid current or cuts off.
 
-use super::OperatingPoint;
+use super::{OperatingPoint, SmallSignal};
 use super::cycle::Cycle;
 use super::steady_state::NoSteadyState;
 use crate::circuit::{Network, Role};
-use crate::portable::{decibels, ratio};
+use crate::portable::{decibels, magnitude, ratio};
 
 /// The tone, Hz.
 const FREQUENCY: f64 = 1000.0;
@@ -18,6 +18,10 @@ const COMPRESSION_DB: f64 = 1.0;
 const THDS: [f64; 3] = [0.001, 0.01, 0.03];
 /// The search begins this far below full scale, dB.
 const BELOW_FULL_SCALE_DB: f64 = -80.0;
+/// Where a bound holds there already, it is followed down to here; what still holds then holds at rest.
+const AT_REST_DB: f64 = -200.0;
+/// A gain below this lets no signal through, and what is left is rounding.
+const NO_SIGNAL: f64 = 1e-9;
 /// It ends this far above: 100 × full scale.
 const ABOVE_FULL_SCALE_DB: f64 = 40.0;
 /// Stride of the search for a bracket, dB. A limit that is passed twice within one stride may be missed.
@@ -54,6 +58,8 @@ pub enum NotReached {
     Never,
     /// It holds with hardly any signal already.
     AtRest,
+    /// The stage lets no signal through.
+    NoSignal,
     /// Beyond some level, and before this bound, no steady state was found.
     NoSteadyState(NoSteadyState),
 }
@@ -62,6 +68,7 @@ impl std::fmt::Display for NotReached {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
         match self {
             NotReached::Never => write!(f, "not reached below 100 times full scale"),
+            NotReached::NoSignal => write!(f, "no signal reaches the output"),
             NotReached::AtRest => write!(f, "reached at rest already"),
             NotReached::NoSteadyState(reason) => write!(f, "not reached before {reason}"),
         }
@@ -72,7 +79,8 @@ impl std::fmt::Display for NotReached {
 ///
 /// Order: THD 0.1, 1 and 3 %, compression, then grid current and cut-off of each tube.
 pub fn headroom(network: &Network, point: &OperatingPoint, full_scale: f64) -> Vec<Reached> {
-    let mut search = Search { network, point, full_scale, seen: Vec::new(), failed: None };
+    let small = SmallSignal::new(network, point).at(FREQUENCY).map_or(0.0, |r| magnitude(r.gain));
+    let mut search = Search { network, point, full_scale, small, seen: Vec::new(), failed: None };
     search.scan();
     let roles: Vec<Role> = network.triodes.iter().map(|t| t.role).collect();
     THDS.map(Bound::Thd)
@@ -95,6 +103,8 @@ struct Search<'a> {
     network: &'a Network,
     point: &'a OperatingPoint,
     full_scale: f64,
+    /// Gain of a vanishing signal.
+    small: f64,
     /// In rising level.
     seen: Vec<Seen>,
     failed: Option<NoSteadyState>,
@@ -137,8 +147,7 @@ impl Search<'_> {
         match bound {
             Bound::Thd(part) => decibels(cycle.thd() / part),
             Bound::Compression => {
-                let small = self.seen.first().map_or(cycle.gain(), |first| first.cycle.gain());
-                -decibels(cycle.gain() / small) - COMPRESSION_DB
+-decibels(cycle.gain() / self.small) - COMPRESSION_DB
             }
             Bound::GridCurrent(role) => tube(role).map_or(f64::NEG_INFINITY, |t| {
                 decibels(cycle.tubes[t].peak_grid_current.max(1e-30) / GRID_CURRENT)
@@ -151,16 +160,37 @@ impl Search<'_> {
     }
 
     fn find(&self, bound: Bound) -> Result<(f64, f64), NotReached> {
+        if self.small < NO_SIGNAL {
+            return Err(NotReached::NoSignal);
+        }
         let never = self.failed.map_or(NotReached::Never, NotReached::NoSteadyState);
         let above = self.seen.iter().position(|s| self.excess(bound, &s.cycle) >= 0.0).ok_or(never)?;
         if above == 0 {
-            return Err(NotReached::AtRest);
+            return self.find_below(bound);
         }
         let at = |index: usize| {
             let seen = &self.seen[index];
             (seen.level_db, self.excess(bound, &seen.cycle), seen.cycle.output_rms())
         };
         self.narrow(bound, at(above - 1), at(above)).map_err(NotReached::NoSteadyState)
+    }
+
+    /// A bound that holds at the lowest level of the scan: down from there in long strides until it does not.
+    fn find_below(&self, bound: Bound) -> Result<(f64, f64), NotReached> {
+        const STRIDE_DOWN_DB: f64 = 20.0;
+        let point = |level_db: f64| -> Result<(f64, f64, f64), NotReached> {
+            let cycle = self.cycle(level_db).map_err(NotReached::NoSteadyState)?;
+            Ok((level_db, self.excess(bound, &cycle), cycle.output_rms()))
+        };
+        let mut high = point(BELOW_FULL_SCALE_DB)?;
+        while high.0 > AT_REST_DB {
+            let low = point(high.0 - STRIDE_DOWN_DB)?;
+            if low.1 < 0.0 {
+                return self.narrow(bound, low, high).map_err(NotReached::NoSteadyState);
+            }
+            high = low;
+        }
+        Err(NotReached::AtRest)
     }
 
     /// Narrows a bracket of (level, excess, output) by the Illinois form of the false position (Dowell & Jarratt, 1971),

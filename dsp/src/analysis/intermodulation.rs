@@ -13,9 +13,9 @@ const STEPS_A_CYCLE: usize = 33;
 /// A pair of tones.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum TonePair {
-    /// 60 Hz and 7 kHz, 4:1 (SMPTE RP 120).
+    /// 60 Hz and 7 kHz, 4:1, the pair of SMPTE RP 120.
     Smpte,
-    /// 250 Hz and 8 kHz, 4:1 (DIN 45403).
+    /// 250 Hz and 8 kHz, 4:1, the pair of DIN 45403.
     Din,
     /// 19 and 20 kHz, equal (IEC 60268-3 difference-frequency distortion).
     Difference,
@@ -79,7 +79,7 @@ impl Intermodulation {
         let amplitudes = refined(makeup.high * STEPS_A_CYCLE, &sums)?;
         Ok(Intermodulation::from_amplitudes(
             pair,
-            &amplitudes.into_iter().map(|a| a.map(magnitude)).collect::<Vec<_>>(),
+            &amplitudes.into_iter().map(|a| a.settled().map(magnitude)).collect::<Vec<_>>(),
         ))
     }
 

@@ -30,5 +30,6 @@ pub use scatter::{Scatter, TubeScatter, metered_volts};
 pub use small_signal::{Response, SmallSignal};
 pub use steady_state::{NoSteadyState, Period, bins, harmonics, steady_state, steady_state_near};
 pub use sweep::{Band, band, frequencies, level_sweep, levels, ripple_rejection_db};
-pub use tone::Tone;
+pub use refine::Amplitude;
+pub use tone::{THD_ORDERS, Tone};
 pub use trust::{ensemble, fits, half_range, median, percentile};

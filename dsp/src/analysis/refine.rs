@@ -13,8 +13,28 @@ const WANTED_DB: f64 = 0.02;
 /// answers within 0.01 dB, below it they part from them as double precision runs out.
 const FLOOR_DB: f64 = -220.0;
 
-/// Complex amplitudes from `sums(steps)`, extrapolated to infinitely many steps; one that still moves by more than
-/// 0.02 dB after the last doubling is `None`, and so is one 220 dB below the largest.
+/// An amplitude with what is known of it.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Amplitude {
+    /// It stands still as the steps are made finer.
+    Settled(Complex64),
+    /// 220 dB below the largest: too small for the arithmetic, and for anyone.
+    Negligible,
+    /// It still moves by more than 0.02 dB after the last doubling of the steps.
+    Unsettled,
+}
+
+impl Amplitude {
+    /// The amplitude where it can be trusted.
+    pub fn settled(self) -> Option<Complex64> {
+        match self {
+            Amplitude::Settled(amplitude) => Some(amplitude),
+            Amplitude::Negligible | Amplitude::Unsettled => None,
+        }
+    }
+}
+
+/// Complex amplitudes from `sums(steps)`, extrapolated to infinitely many steps.
 ///
 /// The trapezoidal rule's error falls as the square of the step, so two counts give the limit (Richardson).
 ///
@@ -23,7 +43,7 @@ const FLOOR_DB: f64 = -220.0;
 pub(crate) fn refined(
     first_steps: usize,
     sums: &dyn Fn(usize) -> Result<Vec<Complex64>, NoSteadyState>,
-) -> Result<Vec<Option<Complex64>>, NoSteadyState> {
+) -> Result<Vec<Amplitude>, NoSteadyState> {
     let mut steps = first_steps | 1;
     let mut coarse = sums(steps)?;
     let mut doublings = 0;
@@ -32,9 +52,7 @@ pub(crate) fn refined(
         let fine = sums(finer)?;
         let better = extrapolated((steps, &coarse), (finer, &fine));
         let judged = judge(&better, &fine);
-        if doublings == DOUBLINGS
-            || judged.iter().zip(&better).all(|(j, b)| j.is_some() || magnitude(*b) <= floor(&better))
-        {
+        if doublings == DOUBLINGS || !judged.contains(&Amplitude::Unsettled) {
             return Ok(judged);
         }
         (steps, coarse) = (finer, fine);
@@ -48,15 +66,12 @@ fn extrapolated((n, coarse): (usize, &[Complex64]), (m, fine): (usize, &[Complex
     coarse.iter().zip(fine).map(|(c, f)| (f * square - c) / (square - 1.0)).collect()
 }
 
-fn judge(better: &[Complex64], fine: &[Complex64]) -> Vec<Option<Complex64>> {
-    let floor = floor(better);
-    let judge = |(b, f): (&Complex64, &Complex64)| {
-        let settled = magnitude(b - f) <= (ratio(WANTED_DB) - 1.0) * magnitude(*b);
-        (settled && magnitude(*b) > floor).then_some(*b)
+fn judge(better: &[Complex64], fine: &[Complex64]) -> Vec<Amplitude> {
+    let floor = better.iter().fold(0.0, |a: f64, b| a.max(magnitude(*b))) * ratio(FLOOR_DB);
+    let judge = |(b, f): (&Complex64, &Complex64)| match magnitude(*b) {
+        size if size <= floor => Amplitude::Negligible,
+        size if magnitude(b - f) <= (ratio(WANTED_DB) - 1.0) * size => Amplitude::Settled(*b),
+        _ => Amplitude::Unsettled,
     };
     better.iter().zip(fine).map(judge).collect()
-}
-
-fn floor(amplitudes: &[Complex64]) -> f64 {
-    amplitudes.iter().fold(0.0, |a: f64, b| a.max(magnitude(*b))) * ratio(FLOOR_DB)
 }

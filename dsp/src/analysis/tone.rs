@@ -4,7 +4,7 @@ use std::cell::RefCell;
 
 use num_complex::Complex64;
 
-use super::refine::refined;
+use super::refine::{Amplitude, refined};
 use super::steady_state::{NoSteadyState, Period, harmonics, steady_state, steady_state_near};
 use crate::circuit::Network;
 use crate::portable::{decibels, degrees, magnitude};
@@ -13,6 +13,9 @@ use crate::portable::{decibels, degrees, magnitude};
 const FIRST_STEPS: usize = 385;
 /// Steps a cycle of the highest harmonic to begin with, at least.
 const STEPS_AN_ORDER: usize = 38;
+/// Highest harmonic that the THD sums.
+pub const THD_ORDERS: usize = 10;
+
 /// What a sine of one level and frequency becomes.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Tone {
@@ -20,16 +23,15 @@ pub struct Tone {
     pub frequency: f64,
     /// Level at `in`, V rms.
     pub input_rms: f64,
-    /// Complex peak amplitudes at `o`, fundamental first, sine reference, V; `None` where a figure is not trusted.
-    pub harmonics: Vec<Option<Complex64>>,
+    /// Complex peak amplitudes at `o`, fundamental first, sine reference, V.
+    pub harmonics: Vec<Amplitude>,
 }
 
 impl Tone {
     /// Measures `network` with a sine of `input_rms` volts at `frequency` Hz, to harmonic `orders`.
     ///
     /// The steps of a period are doubled and the harmonics extrapolated to none (the trapezoidal rule's error falls as
-    /// the square of the step) until extrapolation moves no harmonic by more than 0.02 dB; one that still moves is
-    /// `None`.
+    /// the square of the step) until extrapolation moves no harmonic by more than 0.02 dB.
     ///
     /// # Errors
     /// [`NoSteadyState`] where shooting does not close the period.
@@ -81,7 +83,7 @@ impl Tone {
         Some(decibels(self.output_rms()? / self.input_rms))
     }
 
-    /// THD_F: the root of the summed squares of the harmonics from the second up, over the fundamental (IEC 60268-3).
+    /// THD_F: the root of the summed squares of the harmonics from the second to the tenth, over the fundamental (IEC 60268-3).
     pub fn thd_f(&self) -> Option<f64> {
         Some(self.distortion()? / magnitude(self.harmonic(1)?))
     }
@@ -93,13 +95,17 @@ impl Tone {
     }
 
     fn harmonic(&self, order: usize) -> Option<Complex64> {
-        *self.harmonics.get(order - 1)?
+        self.harmonics.get(order - 1)?.settled()
     }
 
-    /// Harmonics that are not trusted are small beside those that are, unless there is no trusted one at all.
+    /// √ΣH² of the second to the tenth harmonic; `None` where one that may matter has not settled.
     fn distortion(&self) -> Option<f64> {
-        let known: Vec<f64> = self.harmonics.iter().skip(1).flatten().map(|h| h.norm_sqr()).collect();
-        (!known.is_empty()).then(|| known.iter().sum::<f64>().sqrt())
+        let summed = self.harmonics.get(1..)?.iter().take(THD_ORDERS - 1);
+        if summed.clone().any(|h| *h == Amplitude::Unsettled) {
+            return None;
+        }
+        let squares: Vec<f64> = summed.filter_map(|h| h.settled()).map(|h| h.norm_sqr()).collect();
+        (!squares.is_empty()).then(|| squares.iter().sum::<f64>().sqrt())
     }
 }
 
