@@ -1,6 +1,6 @@
 //! Shapes of the figures that are measured on request: sweeps, intermodulation, noise, headroom.
 
-use serde::{Deserialize, Serialize};
+use serde::{Deserialize, Deserializer, Serialize};
 
 use super::Why;
 
@@ -58,23 +58,67 @@ pub struct SweepPointFigures {
 
 /// Intermodulation of a pair of tones.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(into = "ImdJson", from = "ImdJson")]
 pub struct ImdFigures {
     /// smpte, din or difference.
     pub kind: String,
     /// V rms of the sine that peaks where the pair does.
     pub input_rms: f64,
     /// smpte and din.
-    #[serde(skip_serializing_if = "Option::is_none", default)]
     pub percent: Option<f64>,
     /// difference, second order.
-    #[serde(skip_serializing_if = "Option::is_none", default)]
     pub d2_percent: Option<f64>,
     /// difference, third order.
-    #[serde(skip_serializing_if = "Option::is_none", default)]
     pub d3_percent: Option<f64>,
     /// Why a figure is missing.
-    #[serde(skip_serializing_if = "Why::is_empty", default)]
     pub why: Why,
+}
+
+/// The same as JSON has it: the figures that the pair has, `null` where one could not be had.
+#[derive(Serialize, Deserialize)]
+struct ImdJson {
+    kind: String,
+    input_rms: f64,
+    #[serde(skip_serializing_if = "Option::is_none", default, deserialize_with = "there")]
+    percent: Option<Option<f64>>,
+    #[serde(skip_serializing_if = "Option::is_none", default, deserialize_with = "there")]
+    d2_percent: Option<Option<f64>>,
+    #[serde(skip_serializing_if = "Option::is_none", default, deserialize_with = "there")]
+    d3_percent: Option<Option<f64>>,
+    #[serde(skip_serializing_if = "Why::is_empty", default)]
+    why: Why,
+}
+
+/// A key that is there, be it with `null`.
+fn there<'de, D: Deserializer<'de>>(value: D) -> Result<Option<Option<f64>>, D::Error> {
+    Option::deserialize(value).map(Some)
+}
+
+impl From<ImdFigures> for ImdJson {
+    fn from(figures: ImdFigures) -> Self {
+        let difference = figures.kind == "difference";
+        ImdJson {
+            kind: figures.kind,
+            input_rms: figures.input_rms,
+            percent: (!difference).then_some(figures.percent),
+            d2_percent: difference.then_some(figures.d2_percent),
+            d3_percent: difference.then_some(figures.d3_percent),
+            why: figures.why,
+        }
+    }
+}
+
+impl From<ImdJson> for ImdFigures {
+    fn from(json: ImdJson) -> Self {
+        ImdFigures {
+            kind: json.kind,
+            input_rms: json.input_rms,
+            percent: json.percent.flatten(),
+            d2_percent: json.d2_percent.flatten(),
+            d3_percent: json.d3_percent.flatten(),
+            why: json.why,
+        }
+    }
 }
 
 /// Thermal and shot noise, 20 Hz to 20 kHz: a best case, without flicker and grid noise.
@@ -89,15 +133,20 @@ pub struct NoiseFigures {
     /// 0 dBFS times that gain over the unweighted output noise.
     #[serde(rename = "signal_to_noise_dB")]
     pub signal_to_noise_db: Option<f64>,
-    /// What the supply's ripple leaves at `o`, V rms; where the stage file states a ripple.
-    #[serde(skip_serializing_if = "Option::is_none", default)]
-    pub hum_rms: Option<f64>,
+    /// What the supply's ripple leaves at `o`, V rms; there where the stage file states a ripple.
+    #[serde(skip_serializing_if = "Option::is_none", default, deserialize_with = "there")]
+    pub hum_rms: Option<Option<f64>>,
     /// Hz.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub hum_frequency: Option<f64>,
     /// 0 dBFS times the gain at 1 kHz over the hum.
-    #[serde(rename = "hum_below_full_scale_dB", skip_serializing_if = "Option::is_none", default)]
-    pub hum_below_full_scale_db: Option<f64>,
+    #[serde(
+        rename = "hum_below_full_scale_dB",
+        skip_serializing_if = "Option::is_none",
+        default,
+        deserialize_with = "there"
+    )]
+    pub hum_below_full_scale_db: Option<Option<f64>>,
     /// THD+N of the first tone asked, noise unweighted.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub thd_n_percent: Option<f64>,

@@ -18,6 +18,9 @@ pub mod recording;
 mod sheet;
 mod sweep;
 mod tone;
+
+#[cfg(test)]
+mod tests;
 mod undecided;
 mod values;
 
@@ -244,6 +247,22 @@ pub struct WarningFigures {
     pub used_percent: Option<f64>,
     /// In words.
     pub text: String,
+    /// Why a figure is `null`.
+    #[serde(skip_serializing_if = "Why::is_empty", default)]
+    pub why: Why,
+}
+
+impl WarningFigures {
+    /// A warning of `part` that is no exceeded limit.
+    pub fn note(part: &str, about: &str, text: String) -> Self {
+        WarningFigures {
+            part: part.to_owned(),
+            limit: about.to_owned(),
+            used_percent: None,
+            text,
+            why: [("used_percent".to_owned(), "no limit is exceeded".to_owned())].into(),
+        }
+    }
 }
 
 /// Readings of a meter.

@@ -30,8 +30,12 @@ pub fn of(stage: &Stage, network: &Network, point: &OperatingPoint, tone: Option
     }
     let ripple = stage.supply.ripple;
     let hum = ripple.and_then(|ripple| hum(&small, ripple));
-    if ripple.is_some() && hum.is_none() {
-        why.insert("hum_rms".to_owned(), "the network has no solution at the ripple's frequency".to_owned());
+    // Hum of 0 V is below full scale by no number of decibels.
+    let below = hum.filter(|&hum| hum > 0.0).zip(gain).map(|(hum, gain)| decibels(full_scale * gain / hum));
+    if ripple.is_some() {
+        let missing = [("hum_rms", hum.is_none()), ("hum_below_full_scale_dB", below.is_none())];
+        let reason = if hum.is_none() { "the network has no solution there" } else { "nothing reaches the output" };
+        why.extend(missing.iter().filter(|(_, none)| *none).map(|(key, _)| ((*key).to_owned(), reason.to_owned())));
     }
     let both = noise.zip(gain);
     NoiseFigures {
@@ -39,13 +43,9 @@ pub fn of(stage: &Stage, network: &Network, point: &OperatingPoint, tone: Option
         output_rms_a: noise.map(|n| n.output_rms_a),
         input_rms: both.map(|(n, gain)| n.output_rms / gain),
         signal_to_noise_db: both.map(|(n, gain)| decibels(full_scale * gain / n.output_rms)),
-        hum_rms: hum,
+        hum_rms: ripple.map(|_| hum),
         hum_frequency: ripple.map(|ripple| ripple.frequency),
-        // Hum of 0 V is below full scale by no number of decibels.
-        hum_below_full_scale_db: hum
-            .zip(gain)
-            .filter(|&(hum, _)| hum > 0.0)
-            .map(|(hum, gain)| decibels(full_scale * gain / hum)),
+        hum_below_full_scale_db: ripple.map(|_| below),
         thd_n_percent: tone.zip(noise).and_then(|(tone, noise)| thd_n(tone, noise)),
         note: NOTE.to_owned(),
         why,

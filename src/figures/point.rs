@@ -148,6 +148,7 @@ fn exceeded(rating: &RatingFigures) -> Option<WarningFigures> {
             with_unit(rating.asked, &rating.unit),
             with_unit(allowed, &rating.unit),
         ),
+        why: Why::new(),
     })
 }
 
@@ -162,12 +163,7 @@ fn with_unit(value: f64, unit: &str) -> String {
 /// The warning of a law used beyond its reach.
 fn beyond_law(beyond: &BeyondLaw) -> WarningFigures {
     let part = beyond.role.name();
-    WarningFigures {
-        part: part.to_owned(),
-        limit: "law".to_owned(),
-        used_percent: None,
-        text: format!("{part}: {beyond}"),
-    }
+    WarningFigures::note(part, "law", format!("{part}: {beyond}"))
 }
 
 /// Nodes that a builder can reach with a probe.

@@ -42,9 +42,9 @@ pub fn noise(configurations: &[ConfigurationFigures], unit: LevelUnit) -> Option
         table.row(label, configurations.iter().map(of));
     };
     optional("THD+N", &|n| n.thd_n_percent.map(units::percent));
-    optional("hum", &|n| n.hum_rms.map(units::volts));
+    optional("hum", &|n| n.hum_rms.map(|hum| or(hum.map(units::volts))));
     optional("  at", &|n| n.hum_frequency.map(units::hertz));
-    optional("  below 0 dBFS", &|n| n.hum_below_full_scale_db.map(|db| format!("{db:.1} dB")));
+    optional("  below 0 dBFS", &|n| n.hum_below_full_scale_db.map(|db| or(db.map(|db| format!("{db:.1} dB")))));
     Some(table)
 }
 

@@ -185,7 +185,7 @@ pub fn tones(configurations: &[ConfigurationFigures], unit: LevelUnit) -> Option
             };
             table.row(&format!("H{order} dBc"), figure(level_with_trust));
             if order <= HIGHEST_PHASE {
-                table.row("  phase", figure(|h| or_dash(h.phase_deg, |p| format!("{p:.0}°"))));
+                table.row("  phase", figure(|h| or_dash(h.phase_deg, |p| format!("{:.0}°", p.round() % 360.0))));
             }
         }
     }
