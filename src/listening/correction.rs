@@ -112,6 +112,62 @@ mod tests {
         assert!(left < -120.0, "{left} dBFS");
     }
 
+    /// A sine of `peak` in every channel, a part after another: level in dBFS and length in s.
+    fn parts(parts: &[(f64, f64)]) -> Planes {
+        let tone = |(level, seconds): &(f64, f64)| {
+            let peak = ratio(*level);
+            (0..(seconds * 48_000.0) as usize)
+                .map(move |n| peak * (std::f64::consts::TAU * 1000.0 * n as f64 / 48_000.0).sin())
+                .collect::<Vec<f64>>()
+        };
+        vec![parts.iter().flat_map(tone).collect(); 2]
+    }
+
+    /// EBU Tech 3341, minimum requirements, tests 1 to 5 (signals made after its description, from memory): a stereo sine of
+    /// 1 kHz reads its peak level in LUFS within 0.1 LU, and quiet parts are gated.
+    #[test]
+    fn loudness_meets_the_ebu_minimum_requirements() {
+        let gated = [(-72.0, 10.0), (-36.0, 10.0), (-23.0, 60.0), (-36.0, 10.0), (-72.0, 10.0)];
+        let cases: [(&[(f64, f64)], f64); 5] = [
+            (&[(-23.0, 20.0)], -23.0),
+            (&[(-33.0, 20.0)], -33.0),
+            (&gated[1..4], -23.0),
+            (&gated, -23.0),
+            (&[(-26.0, 20.0), (-20.0, 20.1), (-26.0, 20.0)], -23.0),
+        ];
+        for (signal, expected) in cases {
+            let read = levels(&parts(signal), 48_000).and_then(|levels| levels.loudness).unwrap();
+            assert!((read - expected).abs() <= 0.1, "{signal:?}: {read} LUFS, not {expected}");
+        }
+    }
+
+    /// EBU Tech 3341, tests 15 to 19 (from memory): sines at a part of the rate with a starting phase, whose true peak reads
+    /// −6 dBTP, of the last +3 dBTP, within +0.2 and −0.4 dB.
+    #[test]
+    fn true_peak_meets_the_ebu_minimum_requirements() {
+        let cases = [
+            (4.0, 0.0, 0.5, -6.0),
+            (4.0, 45.0, 0.5, -6.0),
+            (6.0, 60.0, 0.5, -6.0),
+            (8.0, 67.5, 0.5, -6.0),
+            (4.0, 45.0, 1.41, 3.0),
+        ];
+        for (part, phase, peak, expected) in cases {
+            let sample = |n: usize| peak * (std::f64::consts::TAU * n as f64 / part + f64::to_radians(phase)).sin();
+            let planes = vec![(0..48_000).map(sample).collect::<Vec<f64>>()];
+            let read = decibels(levels(&planes, 48_000).unwrap().true_peak);
+            assert!((-0.4..=0.2).contains(&(read - expected)), "rate/{part} at {phase} degrees: {read} dBTP");
+        }
+    }
+
+    /// ITU-R BS.1770-4: a 997 Hz sine at 0 dBFS in one channel reads −3.01 LUFS.
+    #[test]
+    fn full_scale_sine_reads_as_published() {
+        let sine = (0..96_000).map(|n| (std::f64::consts::TAU * 997.0 * f64::from(n) / 48_000.0).sin());
+        let read = levels(&vec![sine.collect()], 48_000).and_then(|levels| levels.loudness).unwrap();
+        assert!((read + 3.01).abs() <= 0.01, "{read} LUFS");
+    }
+
     #[test]
     fn quantised_gain_is_the_stated_gain() {
         let planes = vec![(0..4800).map(|k| 0.5 * (f64::from(k) * 0.1).sin()).collect::<Vec<f64>>()];

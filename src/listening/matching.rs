@@ -29,7 +29,7 @@ pub fn match_loudness(takes: &[Levels]) -> Result<(f64, Vec<Match>), usize> {
         let true_peak = decibels(levels.true_peak);
         read.push((hundredths(loudness, f64::round), hundredths(true_peak, f64::ceil)));
     }
-    let highest = hundredths(HIGHEST_TRUE_PEAK, f64::floor);
+    let highest = hundredths(HIGHEST_TRUE_PEAK, f64::round);
     let target = read.iter().map(|(loudness, peak)| (*loudness).min(highest - peak + loudness)).min().unwrap_or(0);
     let unit = |count: i64| count as f64 / 100.0;
     let matched = |(loudness, peak): &(i64, i64)| Match {

@@ -192,10 +192,7 @@ impl<'a> PackJob<'a> {
         dealt.sort_by_key(|(letter, ..)| *letter);
         let samples: Vec<Vec<Vec<i32>>> =
             dealt.par_iter().map(|(_, draft, m)| correction::quantise(&draft.planes, m.gain)).collect();
-        let files = flac::encode_alike(&samples, rate).map_err(|error| WorkError::Failed {
-            problem: format!("a take cannot be written as FLAC: {error}"),
-            remedy: "please report this line with the command".to_owned(),
-        })?;
+        let files = flac::encode_alike(&samples, rate);
         let mut takes = Vec::new();
         for (((letter, draft, matched), samples), file) in dealt.into_iter().zip(&samples).zip(&files) {
             takes.push(key_take(number, letter, &draft, matched, (samples, rate), (file, target))?);

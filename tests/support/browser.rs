@@ -65,8 +65,17 @@ impl Browser {
         let mut args: Vec<String> = FLAGS.iter().map(|&flag| flag.to_owned()).collect();
         args.push(format!("--user-data-dir={}", browser.folder.path().join("profile").display()));
         let options = json!({ "args": args });
+<<<<<<< HEAD
         let wanted =
             json!({"capabilities": {"alwaysMatch": {"browserName": "chrome", "goog:chromeOptions": options}}});
+=======
+        let wanted = json!({"capabilities": {"alwaysMatch": {
+            "browserName": "chrome",
+            "goog:chromeOptions": options,
+            "goog:loggingPrefs": {"browser": "ALL"},
+            "unhandledPromptBehavior": "accept",
+        }}});
+>>>>>>> 64031f5 (Encode FLAC in whole numbers; test packs against flac, ffmpeg and a real browser)
         let session = browser.post("", &wanted);
         let id = session["sessionId"].as_str().unwrap_or_else(|| {
             panic!("Chromium does not start: {session}; tools/run-tests installs it (Debian: chromium)")
@@ -113,6 +122,8 @@ impl Browser {
         let found = self.post("/element", &json!({"using": "css selector", "value": selector}));
         let element = found.as_object().and_then(|found| found.values().next()).and_then(Value::as_str);
         let element = element.unwrap_or_else(|| panic!("{selector}: {found}"));
+        // Into the middle: what is fixed to the window's edge may lie over the rest.
+        self.run(&format!("document.querySelector({}).scrollIntoView({{block: 'center'}})", json!(selector)));
         self.post(&format!("/element/{element}/click"), &json!({}));
     }
 
@@ -155,5 +166,40 @@ impl Drop for Browser {
         let _ = self.agent.delete(&self.session).call();
         let _ = self.driver.kill();
         let _ = self.driver.wait();
+    }
+}
+
+impl Browser {
+    /// A script that every page runs before its own.
+    pub fn before_pages(&self, script: &str) {
+        self.tool("Page.addScriptToEvaluateOnNewDocument", json!({"source": script}));
+    }
+
+    /// Presses Tab until the element with this id has the focus, as a person without a pointer does.
+    pub fn tab_to(&self, id: &str) {
+        for _ in 0..60 {
+            if self.value("document.activeElement.id") == json!(id) {
+                return;
+            }
+            // The protocol's own code for Tab.
+            self.keys("\u{e004}");
+        }
+        panic!("Tab never reaches {id}");
+    }
+
+    /// Waits for the one file that is downloaded next to those known, and returns it.
+    pub fn download(&self, known: usize) -> std::path::PathBuf {
+        let started = Instant::now();
+        loop {
+            let entries = std::fs::read_dir(self.downloads()).expect("a folder");
+            let mut files: Vec<_> = entries.filter_map(|entry| Some(entry.ok()?.path())).collect();
+            files.retain(|path| path.extension().is_some_and(|ending| ending == "json"));
+            files.sort_by_key(|path| path.metadata().and_then(|metadata| metadata.modified()).ok());
+            if files.len() > known {
+                return files.pop().expect("a file");
+            }
+            assert!(started.elapsed() < PATIENCE, "nothing was downloaded");
+            std::thread::sleep(Duration::from_millis(50));
+        }
     }
 }
