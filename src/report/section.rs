@@ -176,9 +176,9 @@ fn headroom(k: usize, c: &ConfigurationFigures) -> Vec<Figure> {
         line(format!("input for {percent}\u{a0}% THD"), limit, &format!("thd/{n}"))
     });
     let mut out: Vec<Figure> = thd.collect();
-    out.push(line("input for 1\u{a0}dB compression".to_owned(), &headroom.compression_1db, "compression_1dB"));
-    out.push(line("input where grid current begins".to_owned(), &headroom.grid_current, "grid_current"));
-    out.push(line("input where the plate cuts off".to_owned(), &headroom.cutoff, "cutoff"));
+    out.push(line("input at 1\u{a0}dB compression".to_owned(), &headroom.compression_1db, "compression_1dB"));
+    out.push(line("input at grid current".to_owned(), &headroom.grid_current, "grid_current"));
+    out.push(line("input at cut-off".to_owned(), &headroom.cutoff, "cutoff"));
     out
 }
 

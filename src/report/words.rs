@@ -60,9 +60,10 @@ pub fn percent(value: f64) -> String {
 /// A voltage of the bench, to what a meter shows.
 pub fn bench_volts(value: f64) -> String {
     match value.abs() {
+        size if size < 0.5e-4 => fixed(0.0, 0, "V"),
         size if size >= 99.95 => fixed(value, 0, "V"),
         size if size >= 9.995 => fixed(value, 1, "V"),
-        size if size >= 0.0995 || value == 0.0 => fixed(value, 2, "V"),
+        size if size >= 0.0995 => fixed(value, 2, "V"),
         _ => fixed(1e3 * value, 1, "mV"),
     }
 }
