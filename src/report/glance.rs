@@ -79,7 +79,7 @@ pub fn table(document: &Document) -> (Vec<Column>, Vec<Vec<Cell>>) {
         let at = one_percent(c);
         let value = at.and_then(|(_, limit)| limit.output_rms);
         let pointer = format!("/configurations/{k}/headroom/thd/{}/output_rms", at.map_or(0, |(n, _)| n));
-        Figure::of(value, &|v| words::significant(v, 3), pointer)
+        Figure::of(value, &|v| words::three_digits(v), pointer)
     });
     column("Headroom", detail("dB over the recording"), Better::High, &|k, c| {
         let at = one_percent(c);
@@ -156,7 +156,7 @@ fn one_percent(c: &ConfigurationFigures) -> Option<(usize, &crate::figures::Limi
 
 fn thd(k: usize, c: &ConfigurationFigures) -> Figure {
     let value = tone(c).and_then(|t| t.thd_percent);
-    let mut figure = Figure::of(value, &|v| words::significant(v, 3), format!("{}/thd_percent", at_tone(k)));
+    let mut figure = Figure::of(value, &|v| words::three_digits(v), format!("{}/thd_percent", at_tone(k)));
     if let Some(trust) = trust(c) {
         figure.beside = format!("±{} dB", words::plain_number(trust, 1));
     }
@@ -192,7 +192,7 @@ fn output_impedance(k: usize, c: &ConfigurationFigures) -> Figure {
     };
     let pointer = format!("/configurations/{k}/response/{at}/output_impedance");
     let size = libm::hypot(re, im);
-    Figure { operation: "size", ..Figure::of(Some(size), &|v| words::significant(v, 3), pointer) }
+    Figure { operation: "size", ..Figure::of(Some(size), &|v| words::column_ohms(v), pointer) }
 }
 
 fn loudness(document: &Document, c: &ConfigurationFigures) -> Figure {

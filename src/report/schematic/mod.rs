@@ -43,7 +43,8 @@ pub fn drawing(letter: &str, figures: &ConfigurationFigures) -> Option<Picture> 
         sheet.output((GAIN, PLATE), output);
     }
     let title = format!("Schematic of configuration {letter}");
-    Some(sheet.pen.canvas.finish(format!("schematic-{letter}"), "schematic", &title))
+    let class = if follows { "schematic" } else { "schematic short" };
+    Some(sheet.pen.canvas.finish(format!("schematic-{letter}"), class, &title))
 }
 
 struct Sheet<'a> {
