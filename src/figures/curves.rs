@@ -13,8 +13,8 @@ const TONE: f64 = 1000.0;
 const KEPT: usize = 5;
 /// Points of a plate curve.
 const POINTS: usize = 49;
-/// Plate curves that are aimed at.
-const CURVES: f64 = 8.0;
+/// Most plate curves below that of 0 V.
+const CURVES: usize = 9;
 /// Steps between grid voltages that a tube manual might choose, V.
 const STEPS: [f64; 9] = [0.1, 0.2, 0.5, 1.0, 2.0, 5.0, 10.0, 20.0, 50.0];
 /// A curve is drawn where it reaches this part of the diagram's height.
@@ -88,8 +88,8 @@ fn load(stage: &Stage, role: Role) -> f64 {
 fn grid_curves(section: &Section, plate_volts: &[f64], top_amperes: f64) -> Vec<GridCurveFigures> {
     let top_volts = plate_volts.last().copied().unwrap_or(0.0);
     let visible = |grid: f64| section.currents(grid, top_volts).plate > VISIBLE * top_amperes;
-    let most = |step: f64| (1..=CURVES as usize).take_while(|&k| visible(-step * k as f64)).count();
-    let step = STEPS.into_iter().find(|&step| most(step) < CURVES as usize).unwrap_or(STEPS[STEPS.len() - 1]);
+    let most = |step: f64| (1..=CURVES + 1).take_while(|&k| visible(-step * k as f64)).count();
+    let step = STEPS.into_iter().find(|&step| most(step) <= CURVES).unwrap_or(STEPS[STEPS.len() - 1]);
     let curve = |k: usize| {
         let grid_volts = -step * k as f64;
         let amperes = plate_volts.iter().map(|&volts| short(section.currents(grid_volts, volts).plate)).collect();

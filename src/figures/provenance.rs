@@ -59,8 +59,9 @@ fn evidence(evidence: &Evidence) -> String {
         })
     };
     format!(
-        "{} ({}{sure}){}{}",
+        "{}, {} ({}{sure}){}{}",
         evidence.what,
+        evidence.quantity,
         evidence.source,
         errors("fitted", &evidence.fitted),
         errors("kept out of the fit", &evidence.kept_out)

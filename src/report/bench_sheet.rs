@@ -69,10 +69,14 @@ pub fn sheet(k: usize, figures: &ConfigurationFigures, provenance: Option<&Prove
 
 /// Nodes with the same advice, in one line.
 fn advice(nodes: &[BandFigures]) -> Vec<String> {
-    let with = |band: &BandFigures| {
-        Some(format!("{}: {}.", band.place, super::words::nice_sentence(band.advice.as_ref()?)))
-    };
-    nodes.iter().filter_map(with).collect()
+    let mut lines: Vec<(String, &str)> = Vec::new();
+    for (place, advice) in nodes.iter().filter_map(|band| Some((&band.place, band.advice.as_deref()?))) {
+        match lines.iter_mut().find(|(_, known)| *known == advice) {
+            Some((places, _)) => places.push_str(&format!(", {place}")),
+            None => lines.push((place.clone(), advice)),
+        }
+    }
+    lines.iter().map(|(places, advice)| format!("{places}: {}.", words::nice_sentence(advice))).collect()
 }
 
 fn reading(band: &BandFigures, json: String) -> Reading {
@@ -96,6 +100,9 @@ fn range(low: f64, high: f64) -> String {
         size if size >= 0.0995 => (1.0, 2, "V"),
         _ => (1e3, 1, "mV"),
     };
+    if size < 0.5e-4 {
+        return words::fixed(0.0, 0, "V");
+    }
     let number = |value: f64| words::plain_number(scale * value, decimals);
     format!("{} to {}\u{a0}{unit}", number(low), number(high))
 }
@@ -123,7 +130,7 @@ fn value(figures: &ConfigurationFigures, part: &str) -> String {
     let farads = part.contains("capacit") || part == "gain.bypass" || part == "supply.reservoir";
     let letters = if farads { Letters::Capacitance } else { Letters::Resistance };
     match figures.values.as_ref().and_then(|values| values.get(key)) {
-        Some(ValueFigure::Number(value)) => iec60062::format(*value, letters),
+        Some(ValueFigure::Number(value)) => iec60062::format(*value, letters).replace('u', "µ"),
         _ => String::new(),
     }
 }

@@ -10,25 +10,49 @@ pub struct Warning {
     pub remedy: String,
 }
 
-/// Exceeded limits, the worst first, and what else a builder must know.
+/// Exceeded limits, the worst first, and what else a builder must know; one line a limit of a part.
 pub fn warnings(configurations: &[ConfigurationFigures], letters: &[String]) -> (Vec<Warning>, Vec<Warning>) {
-    let mut seen: Vec<(&WarningFigures, Vec<&str>)> = Vec::new();
+    let mut seen: Vec<Shared<'_>> = Vec::new();
     for (configuration, letter) in configurations.iter().zip(letters) {
         for warning in configuration.warnings() {
-            match seen.iter_mut().find(|(other, _)| other.text == warning.text) {
-                Some((_, letters)) => letters.push(letter),
-                None => seen.push((warning, vec![letter])),
+            // What exceeds no limit is the same only where the words are.
+            let same = |other: &&mut Shared<'_>| {
+                let (a, b) = (other[0].0, warning);
+                let limit = a.used_percent.is_some() && b.used_percent.is_some();
+                a.text == b.text || (limit && a.part == b.part && a.limit == b.limit)
+            };
+            match seen.iter_mut().find(same) {
+                Some(shared) => shared.push((warning, letter)),
+                None => seen.push(vec![(warning, letter)]),
             }
         }
     }
-    seen.sort_by(|(a, _), (b, _)| b.used_percent.unwrap_or(0.0).total_cmp(&a.used_percent.unwrap_or(0.0)));
-    let shown = |(warning, letters): &&(&WarningFigures, Vec<&str>)| Warning {
-        letters: letters.join(" "),
-        text: super::words::nice_sentence(&warning.text),
-        remedy: remedy(warning).to_owned(),
-    };
-    let (exceeded, notes): (Vec<_>, Vec<_>) = seen.iter().partition(|(warning, _)| warning.used_percent.is_some());
-    (exceeded.iter().map(shown).collect(), notes.iter().map(shown).collect())
+    let used = |warning: &WarningFigures| warning.used_percent.unwrap_or(0.0);
+    for shared in &mut seen {
+        shared.sort_by(|a, b| used(b.0).total_cmp(&used(a.0)));
+    }
+    seen.sort_by(|a, b| used(b[0].0).total_cmp(&used(a[0].0)));
+    let (exceeded, notes): (Vec<_>, Vec<_>) = seen.iter().partition(|shared| shared[0].0.used_percent.is_some());
+    (exceeded.into_iter().map(shown).collect(), notes.into_iter().map(shown).collect())
+}
+
+/// Warnings of one kind with the letters of their configurations.
+type Shared<'a> = Vec<(&'a WarningFigures, &'a str)>;
+
+fn shown(shared: &Shared<'_>) -> Warning {
+    let (worst, _) = shared[0];
+    let alike: Vec<&str> = shared.iter().filter(|(w, _)| w.text == worst.text).map(|(_, letter)| *letter).collect();
+    let others: Vec<String> = shared
+        .iter()
+        .filter(|(warning, _)| warning.text != worst.text)
+        .map(|(warning, letter)| format!("{letter} {:.0}\u{a0}%", warning.used_percent.unwrap_or(0.0)))
+        .collect();
+    let others = if others.is_empty() { String::new() } else { format!("; {}", others.join(", ")) };
+    Warning {
+        letters: alike.join(" "),
+        text: format!("{}{others}", super::words::nice_sentence(&worst.text)),
+        remedy: remedy(worst).to_owned(),
+    }
 }
 
 /// What a designer would try first.

@@ -79,7 +79,7 @@ pub fn table(document: &Document) -> (Vec<Column>, Vec<Vec<Cell>>) {
         let at = one_percent(c);
         let value = at.and_then(|(_, limit)| limit.output_rms);
         let pointer = format!("/configurations/{k}/headroom/thd/{}/output_rms", at.map_or(0, |(n, _)| n));
-        Figure::of(value, &|v| words::significant(v, 3), pointer)
+        Figure::of(value, &|v| words::three_digits(v), pointer)
     });
     column("Headroom", detail("dB over the recording"), Better::High, &|k, c| {
         let at = one_percent(c);
@@ -156,7 +156,7 @@ fn one_percent(c: &ConfigurationFigures) -> Option<(usize, &crate::figures::Limi
 
 fn thd(k: usize, c: &ConfigurationFigures) -> Figure {
     let value = tone(c).and_then(|t| t.thd_percent);
-    let mut figure = Figure::of(value, &|v| words::significant(v, 3), format!("{}/thd_percent", at_tone(k)));
+    let mut figure = Figure::of(value, &|v| words::three_digits(v), format!("{}/thd_percent", at_tone(k)));
     if let Some(trust) = trust(c) {
         figure.beside = format!("±{} dB", words::plain_number(trust, 1));
     }
@@ -192,7 +192,7 @@ fn output_impedance(k: usize, c: &ConfigurationFigures) -> Figure {
     };
     let pointer = format!("/configurations/{k}/response/{at}/output_impedance");
     let size = libm::hypot(re, im);
-    Figure { operation: "size", ..Figure::of(Some(size), &|v| words::significant(v, 3), pointer) }
+    Figure { operation: "size", ..Figure::of(Some(size), &|v| words::column_ohms(v), pointer) }
 }
 
 fn loudness(document: &Document, c: &ConfigurationFigures) -> Figure {
@@ -219,22 +219,32 @@ fn worst_rating(k: usize, c: &ConfigurationFigures) -> Figure {
     Figure { beside, ..Figure::of(Some(used), &|v| words::plain_number(v, 0), pointer) }
 }
 
-/// Differences between configurations that the tube data do not settle, in words.
+/// Differences between configurations that the tube data do not settle, a line a harmonic.
 pub fn doubts(document: &Document, letters: &[String]) -> Vec<String> {
     let figures = &document.figures;
     let letter = |name: &String| {
         let at = figures.configurations.iter().position(|c| c.name == *name);
-        at.and_then(|at| letters.get(at)).map_or_else(String::new, Clone::clone)
+        at.and_then(|at| letters.get(at)).map_or("?", String::as_str)
     };
-    let sentence = |doubt: &crate::figures::UndecidedFigures| {
-        format!(
-            "H{}: {} and {} differ by {}; equally good fits of their tubes move that by ±{}, so the data do not settle it.",
-            doubt.order,
-            letter(&doubt.between[0]),
-            letter(&doubt.between[1]),
-            words::decibels(doubt.difference_db.abs()),
-            words::decibels(doubt.trust_db),
-        )
+    let line = |order: u32| {
+        let pairs: Vec<_> = figures.undecided.iter().filter(|doubt| doubt.order == order).collect();
+        let told: Vec<String> = pairs
+            .iter()
+            .take(TOLD)
+            .map(|doubt| {
+                let (a, b) = (letter(&doubt.between[0]), letter(&doubt.between[1]));
+                let difference = words::plain_number(doubt.difference_db.abs(), 1);
+                format!("{a}\u{2013}{b} {difference}\u{a0}±\u{a0}{}", words::decibels(doubt.trust_db))
+            })
+            .collect();
+        let more = pairs.len().saturating_sub(TOLD);
+        let more = if more > 0 { format!(" and {more} pairs more") } else { String::new() };
+        (!told.is_empty()).then(|| {
+            format!("The tube data do not settle which has the higher H{order}: {}{more}.", told.join(", "))
+        })
     };
-    figures.undecided.iter().map(sentence).collect()
+    (2..=10).filter_map(line).collect()
 }
+
+/// Pairs that are told one by one.
+const TOLD: usize = 8;

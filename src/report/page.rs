@@ -54,6 +54,8 @@ pub struct Panel {
 /// A recording with its renders.
 pub struct Play {
     pub recording: String,
+    /// How its levels lie to the headroom.
+    pub histograms: Vec<Picture>,
     pub files: Vec<Render>,
 }
 
@@ -120,6 +122,7 @@ impl Page {
     /// Every picture of the page.
     pub fn pictures(&self) -> impl Iterator<Item = &Picture> {
         let panels = self.together.iter().flat_map(|panel| &panel.pictures);
+        let panels = panels.chain(self.plays.iter().flat_map(|play| &play.histograms));
         panels.chain(self.sections.iter().flat_map(Section::pictures))
     }
 }
@@ -169,13 +172,6 @@ fn together(document: &Document, all: &[Lettered<'_>]) -> Vec<Panel> {
     let each = |draw: &dyn Fn(&[Lettered<'_>], String) -> Option<Picture>, name: &str| -> Vec<Picture> {
         groups(all).filter_map(|(k, group)| draw(group, format!("{name}-{}", k + 1))).collect()
     };
-    let histograms = document.figures.recordings.iter().flatten().enumerate().flat_map(|(n, recording)| {
-        groups(all).filter_map(move |(k, group)| {
-            plots::histogram(recording, group, format!("recording-{}-{}", n + 1, k + 1))
-        })
-    });
-    let names = document.figures.recordings.iter().flatten().map(|r| plain(&r.name).into_owned());
-    let recordings = names.collect::<Vec<_>>().join(", then ");
     let panels = vec![
         Panel {
             heading: "Harmonics",
@@ -200,12 +196,6 @@ fn together(document: &Document, all: &[Lettered<'_>]) -> Vec<Panel> {
             words: "Seen by the source, and by the load with the load removed.".to_owned(),
             lines: Vec::new(),
             pictures: each(&plots::impedances, "impedances"),
-        },
-        Panel {
-            heading: "The recording against the headroom",
-            words: format!("Peaks of 10 ms of {recordings}; uprights: where a sine reaches 1 % THD."),
-            lines: Vec::new(),
-            pictures: histograms.collect(),
         },
     ];
     panels.into_iter().filter(|panel| !panel.pictures.is_empty()).collect()
@@ -237,10 +227,23 @@ fn plays(document: &Document, all: &[Lettered<'_>]) -> Vec<Play> {
         let recording = plain(&render.recording).into_owned();
         match plays.iter_mut().find(|play| play.recording == recording) {
             Some(play) => play.files.push(file),
-            None => plays.push(Play { recording, files: vec![file] }),
+            None => {
+                let histograms = histograms(document, &render.recording, all);
+                plays.push(Play { recording, histograms, files: vec![file] });
+            }
         }
     }
     plays
+}
+
+fn histograms(document: &Document, recording: &str, all: &[Lettered<'_>]) -> Vec<Picture> {
+    let recordings = document.figures.recordings.iter().flatten().enumerate();
+    let Some((n, figures)) = recordings.into_iter().find(|(_, figures)| figures.name == recording) else {
+        return Vec::new();
+    };
+    groups(all)
+        .filter_map(|(k, group)| plots::histogram(figures, group, format!("recording-{}-{}", n + 1, k + 1)))
+        .collect()
 }
 
 /// Text as a part of an address (RFC 3986): letters, digits, `-._~` and what `kept` names stay.

@@ -110,11 +110,10 @@ fn tube_figures(tube: &TubeFigures, at: &str) -> Vec<Figure> {
 
 fn rating(rating: &RatingFigures, json: String) -> Rating {
     let show = |value: f64| {
-        words::nice(&match rating.unit.as_str() {
-            "A" => units::amperes(value),
-            "W" => units::watts(value),
-            _ => units::volts(value),
-        })
+        match rating.unit.as_str() {
+            "A" => format!("{}\u{a0}mA", words::significant(1e3 * value, 3)),
+            unit => format!("{}\u{a0}{unit}", words::significant(value, 3)),
+        }
     };
     let used = rating.used_percent;
     Rating {
@@ -176,9 +175,9 @@ fn headroom(k: usize, c: &ConfigurationFigures) -> Vec<Figure> {
         line(format!("input for {percent}\u{a0}% THD"), limit, &format!("thd/{n}"))
     });
     let mut out: Vec<Figure> = thd.collect();
-    out.push(line("input for 1\u{a0}dB compression".to_owned(), &headroom.compression_1db, "compression_1dB"));
-    out.push(line("input where grid current begins".to_owned(), &headroom.grid_current, "grid_current"));
-    out.push(line("input where the plate cuts off".to_owned(), &headroom.cutoff, "cutoff"));
+    out.push(line("input at 1\u{a0}dB compression".to_owned(), &headroom.compression_1db, "compression_1dB"));
+    out.push(line("input at grid current".to_owned(), &headroom.grid_current, "grid_current"));
+    out.push(line("input at cut-off".to_owned(), &headroom.cutoff, "cutoff"));
     out
 }
 

@@ -60,9 +60,10 @@ pub fn percent(value: f64) -> String {
 /// A voltage of the bench, to what a meter shows.
 pub fn bench_volts(value: f64) -> String {
     match value.abs() {
+        size if size < 0.5e-4 => fixed(0.0, 0, "V"),
         size if size >= 99.95 => fixed(value, 0, "V"),
         size if size >= 9.995 => fixed(value, 1, "V"),
-        size if size >= 0.0995 || value == 0.0 => fixed(value, 2, "V"),
+        size if size >= 0.0995 => fixed(value, 2, "V"),
         _ => fixed(1e3 * value, 1, "mV"),
     }
 }
@@ -98,6 +99,22 @@ pub fn significant(value: f64, count: usize) -> String {
     if text.contains('.') { text.trim_end_matches('0').trim_end_matches('.').to_owned() } else { text }
 }
 
+/// Three digits that matter, zeros kept, so that a column stays even.
+pub fn three_digits(value: f64) -> String {
+    if value == 0.0 || !value.is_finite() {
+        return "0".to_owned();
+    }
+    // Rounded first: 9.996 has one digit more before the point than its logarithm says.
+    let rounded: f64 = format!("{value:.2e}").parse().unwrap_or(value);
+    let before = libm::floor(libm::log10(rounded.abs()) + 1e-12) as i32 + 1;
+    plain_number(value, (3 - before).clamp(0, 12) as usize)
+}
+
+/// Ohms in a column: with a k from 10 000 on.
+pub fn column_ohms(value: f64) -> String {
+    if value >= 9999.5 { format!("{}k", three_digits(value / 1e3)) } else { three_digits(value) }
+}
+
 /// A configuration's letter: A to Z, then A2 and so on.
 pub fn letter(index: usize) -> String {
     let letter = char::from(b'A' + (index % 26) as u8);
@@ -121,5 +138,8 @@ mod tests {
         assert_eq!(short_number(0.01), "0.01");
         assert_eq!(bench_volts(184.4), "184\u{a0}V");
         assert_eq!(letter(27), "B2");
+        assert_eq!(three_digits(9.996), "10.0");
+        assert_eq!(three_digits(0.29), "0.290");
+        assert_eq!(column_ohms(37_611.0), "37.6k");
     }
 }

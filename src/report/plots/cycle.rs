@@ -2,7 +2,7 @@
 
 use super::axis::Axis;
 use super::frame::{Edges, Frame};
-use super::{Lettered, joined, name_class};
+use super::{Lettered, name_class};
 use crate::figures::CycleFigures;
 use crate::report::svg::Picture;
 use crate::report::words;
@@ -31,13 +31,15 @@ pub fn cycles(of: Lettered<'_>, cycles: &[CycleFigures]) -> Option<Picture> {
     let mut ends = Vec::new();
     for (k, cycle, shape) in &shapes {
         let count = shape.len() as f64;
-        let closed = shape.iter().chain(shape.first());
+        // From the input's lowest point, where the levels differ: their names stand at the ends of the lines.
+        let from = 3 * shape.len() / 4;
+        let closed = shape.iter().cycle().skip(from).take(shape.len() + 1);
         let values: Vec<_> = closed.enumerate().map(|(n, value)| Some((n as f64 / count, *value))).collect();
         if let Some(end) = frame.curve(class(of.index, *k), &values) {
             ends.push((words::level(cycle.input_rms), name_class(of.index), end));
         }
     }
-    frame.name_ends(joined(ends));
+    frame.name_ends(ends);
     let title = format!("One cycle at the output of configuration {} at three levels", of.letter);
     Some(frame.canvas.finish(format!("cycle-{}", of.letter), "cycle", &title))
 }

@@ -21,12 +21,19 @@ pub struct Edges {
     pub right: f64,
     pub top: f64,
     pub bottom: f64,
+    /// Of the whole picture.
+    pub width: f64,
 }
 
 impl Edges {
     /// A frame in a picture of `height`, with `right` units for labels at the ends of lines and `above` for marks.
     pub fn of(height: f64, right: f64, above: f64) -> Edges {
-        Edges { left: LEFT, right: WIDTH - right, top: TOP + above, bottom: height - BOTTOM }
+        Edges { left: LEFT, right: WIDTH - right, top: TOP + above, bottom: height - BOTTOM, width: WIDTH }
+    }
+
+    /// The same in a narrower picture.
+    pub fn narrowed(self, width: f64) -> Edges {
+        Edges { right: self.right - (self.width - width), width, ..self }
     }
 
     pub fn x(&self) -> (f64, f64) {
@@ -50,7 +57,7 @@ pub struct Frame {
 impl Frame {
     /// Draws the axes; `x_unit` stands below, `y_unit` above the vertical axis.
     pub fn new(height: f64, edges: Edges, x: Axis, y: Axis, (x_unit, y_unit): (&str, &str)) -> Frame {
-        let mut frame = Frame { canvas: Canvas::new(WIDTH, height), x, y, edges };
+        let mut frame = Frame { canvas: Canvas::new(edges.width, height), x, y, edges };
         frame.vertical(y_unit);
         frame.horizontal(x_unit);
         frame
@@ -78,7 +85,7 @@ impl Frame {
             let x = self.x.at(value);
             self.canvas.line("axis", (x, bottom), (x, bottom + 5.0));
             let half = text_width(&text) / 2.0;
-            if x - half < free_from || x + half > super::frame::WIDTH {
+            if x - half < free_from || x + half > self.edges.width {
                 continue;
             }
             self.canvas.label(Label { text: &text, class: "tick", x, y: bottom + 18.0, anchor: Anchor::Middle });
@@ -119,7 +126,7 @@ impl Frame {
 
     /// The part of a straight line inside the frame (Liang & Barsky, ACM Trans. Graph. 3, 1984).
     fn clipped(&self, a: (f64, f64), b: (f64, f64)) -> Option<((f64, f64), (f64, f64))> {
-        let Edges { left, right, top, bottom } = self.edges;
+        let Edges { left, right, top, bottom, .. } = self.edges;
         let (dx, dy) = (b.0 - a.0, b.1 - a.1);
         let (mut enter, mut leave) = (0.0_f64, 1.0_f64);
         for (step, room) in [(-dx, a.0 - left), (dx, right - a.0), (-dy, a.1 - top), (dy, bottom - a.1)] {

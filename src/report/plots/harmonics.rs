@@ -2,12 +2,14 @@
 
 use super::Lettered;
 use super::axis::Axis;
-use super::frame::{Edges, Frame, WIDTH};
+use super::frame::{Edges, Frame};
 use crate::figures::{ProfileHarmonicFigures, ToneFigures};
 use crate::report::svg::{Anchor, Label, Picture};
 use crate::report::words;
 
-const HEIGHT: f64 = 270.0;
+const HEIGHT: f64 = 250.0;
+/// Narrow, so that four stand side by side.
+const WIDTH: f64 = 306.0;
 /// Least level of the picture, dBc; what is smaller is not drawn.
 const FLOOR: f64 = -140.0;
 
@@ -15,7 +17,7 @@ const FLOOR: f64 = -140.0;
 pub fn spectrum(of: Lettered<'_>, tone: &ToneFigures) -> Picture {
     let top = tone.harmonics.iter().filter_map(|h| h.dbc).fold(-40.0, f64::max);
     let high = (20.0 * (top / 20.0).ceil()).max(-20.0) + 20.0;
-    let edges = Edges::of(HEIGHT, 14.0, 0.0);
+    let edges = Edges::of(HEIGHT, 8.0, 0.0).narrowed(WIDTH);
     let orders = tone.harmonics.iter().map(|h| h.order).max().unwrap_or(10);
     let x = Axis::linear((1.4, f64::from(orders) + 0.6), edges.x());
     let y = Axis::linear((FLOOR, high), edges.y());
@@ -46,10 +48,11 @@ fn pin(frame: &mut Frame, index: usize, at: f64, dbc: f64, trust: Option<f64>) {
     frame.canvas.line(pin_class(index), foot, head);
     let mut top = head.1;
     if let Some(trust) = trust {
-        let (up, down) = (frame.place((at, dbc + trust)), frame.place((at, dbc - trust)));
+        let (up, down) = (frame.place((at, dbc + trust)), frame.place((at, (dbc - trust).max(FLOOR))));
         frame.canvas.line("trust", up, down);
-        for end in [up, down] {
-            frame.canvas.line("trust", (end.0 - 5.0, end.1), (end.0 + 5.0, end.1));
+        let ends = if dbc - trust > FLOOR { vec![up, down] } else { vec![up] };
+        for end in ends {
+            frame.canvas.line("trust", (end.0 - 4.0, end.1), (end.0 + 4.0, end.1));
         }
         top = top.min(up.1);
     }
@@ -65,7 +68,7 @@ fn pin_class(index: usize) -> &'static str {
 
 /// A wanted level is a box of the width allowed; a limit is a bar with its foot on the side that is forbidden.
 fn mark_target(frame: &mut Frame, at: f64, target: &ProfileHarmonicFigures) {
-    let half = 11.0;
+    let half = 9.0;
     let clamp = |dbc: f64| dbc.clamp(frame.y.low, frame.y.high);
     if target.want == "wanted" {
         let (x, top) = frame.place((at, clamp(target.wanted + target.within_db)));

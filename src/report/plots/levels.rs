@@ -18,7 +18,7 @@ const ROWS: usize = 4;
 /// THD of several configurations against the level at `in`, with a mark where the gain has fallen by 1 dB.
 pub fn thd_over_level(group: &[Lettered<'_>], name: String) -> Option<Picture> {
     let (low, high) = range(group.iter().map(|one| one.figures))?;
-    let edges = Edges::of(HEIGHT, 40.0, 0.0);
+    let edges = Edges::of(HEIGHT, 70.0, 0.0);
     let x = Axis::logarithmic((low, high), edges.x());
     let y = Axis::logarithmic((LEAST_THD, 100.0), edges.y());
     let mut frame = Frame::new(HEIGHT, edges, x, y, ("V rms at the input, 1 kHz", "THD, %"));
@@ -87,7 +87,7 @@ pub fn harmonics_over_level(of: Lettered<'_>) -> Option<Picture> {
     if let Some(end) = frame.curve(line_class(of.index), &values) {
         ends.push(("THD".to_owned(), name_class(of.index), end));
     }
-    frame.name_ends(joined(ends));
+    frame.name_ends(ends);
     let title = format!("Harmonics and limits of configuration {} against level", of.letter);
     Some(frame.canvas.finish(format!("level-{}", of.letter), "levels", &title))
 }

@@ -4,7 +4,7 @@ use super::axis::Axis;
 use super::frame::{Edges, Frame};
 use super::{Lettered, joined, line_class, mark_class, name_class};
 use crate::figures::SweepPointFigures;
-use crate::report::svg::Picture;
+use crate::report::svg::{Anchor, Label, Picture};
 
 const HEIGHT: f64 = 290.0;
 /// Decibels below the highest gain that are shown.
@@ -25,16 +25,18 @@ pub fn response(group: &[Lettered<'_>], name: String) -> Option<Picture> {
     let gains = || group.iter().flat_map(|one| points(one)).filter_map(|point| point.response.gain_db);
     let top = gains().fold(f64::NEG_INFINITY, f64::max);
     let low = gains().fold(f64::INFINITY, f64::min).max(top - DEPTH);
-    let edges = Edges::of(HEIGHT, 40.0, 0.0);
+    let edges = Edges::of(HEIGHT, 18.0, 0.0);
     let x = Axis::logarithmic(span(group)?, edges.x());
     let y = Axis::linear((5.0 * (low / 5.0).floor(), 5.0 * (top / 5.0 + 0.3).ceil()), edges.y());
     let mut frame = Frame::new(HEIGHT, edges, x, y, ("Hz", "gain, dB"));
-    let mut ends = Vec::new();
+    let mut named = Vec::new();
     for one in group {
         let value = |point: &SweepPointFigures| Some((point.response.frequency, point.response.gain_db?));
         let values: Vec<_> = points(one).iter().map(value).collect();
-        if let Some(end) = frame.curve(line_class(one.index), &values) {
-            ends.push((one.letter.to_owned(), name_class(one.index), end));
+        frame.curve(line_class(one.index), &values);
+        // Lines fall together at both ends; their names stand at the middle of the band.
+        if let Some(gain) = between(&values, 1000.0) {
+            named.push((one.letter.to_owned(), name_class(one.index), frame.place((1000.0, gain))));
         }
         let Some(sweep) = &one.figures.frequency_sweep else { continue };
         for edge in [sweep.low, sweep.high].into_iter().flatten() {
@@ -44,15 +46,13 @@ pub fn response(group: &[Lettered<'_>], name: String) -> Option<Picture> {
             }
         }
     }
-    // Lines fall together at both ends; their names stand at the middle of the band.
-    let middle = |one: &Lettered<'_>| {
-        let value = |point: &SweepPointFigures| Some((point.response.frequency, point.response.gain_db?));
-        let values: Vec<_> = points(one).iter().map(value).collect();
-        Some((edges.right, frame.y.at(between(&values, 1000.0)?)))
-    };
-    let named: Vec<_> =
-        group.iter().filter_map(|one| Some((one.letter.to_owned(), name_class(one.index), middle(one)?))).collect();
-    frame.name_ends(joined(if named.is_empty() { ends } else { named }));
+    for (letters, class, (x, y)) in joined(named) {
+        let places: Vec<(f64, f64, Anchor)> = [y - 7.0, y + 17.0]
+            .into_iter()
+            .flat_map(|y| [0.0, 40.0, -40.0].map(|dx| (x + dx, y, Anchor::Middle)))
+            .collect();
+        frame.canvas.label_where_free(Label { text: &letters, class, x, y, anchor: Anchor::Middle }, &places);
+    }
     Some(frame.canvas.finish(name, "response", "Gain against frequency with the points 3 dB below 1 kHz"))
 }
 
@@ -72,9 +72,9 @@ pub fn impedances(group: &[Lettered<'_>], name: String) -> Option<Picture> {
         |point: &SweepPointFigures| Some((point.response.frequency, size(point.response.output_impedance)?));
     let all = || group.iter().flat_map(|one| points(one)).flat_map(|p| [input(p), output(p)]).flatten();
     let (low, high) = (all().map(|p| p.1).fold(f64::INFINITY, f64::min), all().map(|p| p.1).fold(0.0, f64::max));
-    let edges = Edges::of(HEIGHT, 74.0, 0.0);
+    let edges = Edges::of(HEIGHT, 96.0, 0.0);
     let x = Axis::logarithmic(span(group)?, edges.x());
-    let y = Axis::logarithmic((low.max(0.1) / 1.5, high.min(1e9) * 1.5), edges.y());
+    let y = Axis::logarithmic((low.max(0.1) / 2.5, high.min(1e9) * 1.5), edges.y());
     let mut frame = Frame::new(HEIGHT, edges, x, y, ("Hz", "impedance, Ω"));
     let mut ends = Vec::new();
     for one in group {

@@ -43,7 +43,8 @@ pub fn drawing(letter: &str, figures: &ConfigurationFigures) -> Option<Picture> 
         sheet.output((GAIN, PLATE), output);
     }
     let title = format!("Schematic of configuration {letter}");
-    Some(sheet.pen.canvas.finish(format!("schematic-{letter}"), "schematic", &title))
+    let class = if follows { "schematic" } else { "schematic short" };
+    Some(sheet.pen.canvas.finish(format!("schematic-{letter}"), class, &title))
 }
 
 struct Sheet<'a> {
@@ -73,7 +74,10 @@ impl Sheet<'_> {
 
     fn farads(&self, key: &str) -> String {
         let farads = self.number(key);
-        farads.map_or_else(|| "?".to_owned(), |farads| iec60062::format(farads, Letters::Capacitance))
+        farads.map_or_else(
+            || "?".to_owned(),
+            |farads| iec60062::format(farads, Letters::Capacitance).replace('u', "µ"),
+        )
     }
 
     /// A stopper of 0 Ω is a wire.
@@ -120,13 +124,13 @@ impl Sheet<'_> {
 
     fn input(&mut self) {
         let full_scale = self.number("source.full_scale").map_or_else(String::new, words::level);
-        self.pen.text("quiet", (36.0, 350.0), Anchor::Middle, &full_scale);
+        self.pen.text("quiet", (14.0, 350.0), Anchor::Start, &format!("0 dBFS = {full_scale}"));
         self.pen.source(36.0, INPUT, 318.0);
         let text = ((82.0, INPUT - 14.0), Anchor::Middle, self.ohms("source.resistance"));
         self.part("source.resistance", text, &|pen| pen.resistor_across(36.0, 128.0, INPUT));
         let has_leak = self.number("input.grid_leak").is_some();
         if self.number("input.pot.resistance").is_some() {
-            self.pot(has_leak);
+            self.pot();
         } else {
             self.pen.wire(&[(128.0, INPUT), (204.0, INPUT)]);
         }
@@ -150,7 +154,7 @@ impl Sheet<'_> {
         }
     }
 
-    fn pot(&mut self, has_leak: bool) {
+    fn pot(&mut self) {
         let text = ((116.0, 254.0), Anchor::End, self.ohms("input.pot.resistance"));
         self.part("input.pot", text, &|pen| {
             pen.resistor_down(128.0, INPUT, 318.0);
@@ -160,7 +164,6 @@ impl Sheet<'_> {
         let position = self.number("input.pot.position").unwrap_or(0.0);
         let text = format!("at {}", words::significant(position, 2));
         self.pen.text("quiet", (116.0, 271.0), Anchor::End, &text);
-        let _ = has_leak;
         self.pen.wire(&[(160.0, 257.0), (160.0, INPUT), (204.0, INPUT)]);
     }
 
