@@ -12,6 +12,7 @@ use platewright_dsp::analysis::Tone;
 use platewright_dsp::circuit::{Network, Stage};
 use platewright_dsp::wave::{Engine, Machine};
 use platewright_dsp::{F64x4, Kernel, LANES};
+use problems::random::{Random, Values, any_stage};
 use problems::{known_answer, two_tube_stage};
 
 const RATE: f64 = 384e3;
@@ -46,6 +47,7 @@ fn main() {
     for level in [0.1, 0.5, 2.0, 10.0] {
         println!("two tubes: exact 1 kHz H1 to H10 at {level} V rms: {:.2} ms", tone_ms(&network, level));
     }
+    random_tones();
 }
 
 /// Four configurations of a stage that share no value the engine uses.
@@ -88,6 +90,25 @@ fn step_ns(stages: &[Stage], kernel: Kernel) -> f64 {
         start.elapsed().as_secs_f64() * 1e9 / STEPS as f64
     };
     best(run)
+}
+
+/// The time of a 1 kHz tone through each of a thousand random stages, to ten times full scale.
+fn random_tones() {
+    let mut random = Random(23);
+    let one = |_| {
+        let stage = any_stage(&mut random, Values::Sensible);
+        let level = random.log_between(0.01, 10.0) * stage.source.full_scale;
+        let network = Network::of(&stage);
+        let start = Instant::now();
+        let _ = std::hint::black_box(Tone::measure(&network, 1000.0, level, 10));
+        start.elapsed().as_secs_f64() * 1e3
+    };
+    let mut times: Vec<f64> = (0..1000).map(one).collect();
+    times.sort_by(f64::total_cmp);
+    println!(
+        "random stages: exact 1 kHz H1 to H10: {:.2} ms in the median, {:.2} ms at worst",
+        times[500], times[999]
+    );
 }
 
 fn tone_ms(network: &Network, level: f64) -> f64 {
