@@ -66,7 +66,10 @@ pub fn headroom(configurations: &[ConfigurationFigures], unit: LevelUnit) -> Opt
         limit_rows(&mut table, name, all.iter().map(|h| h.map(of)).collect(), unit);
     };
     named("gain −1 dB", |h| &h.compression_1db);
-    for (what, of) in [("grid current", (|h| &h.grid_current_of) as fn(&HeadroomFigures) -> &Vec<LimitFigures>), ("cut-off", |h| &h.cutoff_of)] {
+    for (what, of) in [
+        ("grid current", (|h| &h.grid_current_of) as fn(&HeadroomFigures) -> &Vec<LimitFigures>),
+        ("cut-off", |h| &h.cutoff_of),
+    ] {
         for tube in ["gain", "follower"] {
             let limits: Vec<_> = all
                 .iter()

@@ -1,8 +1,8 @@
 //! How far a tone may be raised before the stage distorts, compresses, draws grid current or cuts off.
 
-use super::{OperatingPoint, SmallSignal};
 use super::cycle::Cycle;
 use super::steady_state::NoSteadyState;
+use super::{OperatingPoint, SmallSignal};
 use crate::circuit::{Network, Role};
 use crate::portable::{decibels, magnitude, ratio};
 
@@ -146,9 +146,7 @@ impl Search<'_> {
         let tube = |role: Role| cycle.tubes.iter().position(|t| t.role == role);
         match bound {
             Bound::Thd(part) => decibels(cycle.thd() / part),
-            Bound::Compression => {
--decibels(cycle.gain() / self.small) - COMPRESSION_DB
-            }
+            Bound::Compression => -decibels(cycle.gain() / self.small) - COMPRESSION_DB,
             Bound::GridCurrent(role) => tube(role).map_or(f64::NEG_INFINITY, |t| {
                 decibels(cycle.tubes[t].peak_grid_current.max(1e-30) / GRID_CURRENT)
             }),
