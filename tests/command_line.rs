@@ -6,7 +6,7 @@ use std::process::Command;
 
 use support::Folder;
 
-const COMMANDS: [&str; 7] = ["new", "bias", "measure", "render", "compare", "listen", "demo"];
+const COMMANDS: [&str; 8] = ["new", "bias", "measure", "render", "compare", "listen", "demo", "report"];
 
 #[test]
 fn help_of_every_command_has_an_example() {

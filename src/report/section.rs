@@ -109,11 +109,9 @@ fn tube_figures(tube: &TubeFigures, at: &str) -> Vec<Figure> {
 }
 
 fn rating(rating: &RatingFigures, json: String) -> Rating {
-    let show = |value: f64| {
-        match rating.unit.as_str() {
-            "A" => format!("{}\u{a0}mA", words::significant(1e3 * value, 3)),
-            unit => format!("{}\u{a0}{unit}", words::significant(value, 3)),
-        }
+    let show = |value: f64| match rating.unit.as_str() {
+        "A" => format!("{}\u{a0}mA", words::significant(1e3 * value, 3)),
+        unit => format!("{}\u{a0}{unit}", words::significant(value, 3)),
     };
     let used = rating.used_percent;
     Rating {
