@@ -90,6 +90,7 @@ pub fn dc_dbfs(planes: &Planes) -> Option<f64> {
 }
 
 #[cfg(test)]
+#[allow(clippy::disallowed_methods, reason = "test signals need not be the same on every CPU")]
 mod tests {
     use super::*;
 
