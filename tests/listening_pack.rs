@@ -1,8 +1,9 @@
 //! Listening packs as files: matched, aligned, exact, neutral and repeatable.
+#![allow(clippy::disallowed_methods, reason = "test signals need not be the same on every CPU")]
 
-mod support;
 #[path = "support/pack.rs"]
 mod pack;
+mod support;
 
 use std::path::Path;
 
@@ -25,11 +26,11 @@ fn ffmpeg_levels(path: &Path) -> (f64, f64) {
     let filter = "ebur128=peak=true:metadata=1,ametadata=print:file=-";
     let out = outside("ffmpeg", &["-v", "error", "-nostats", "-i", &text(path), "-af", filter, "-f", "null", "-"]);
     let out = String::from_utf8_lossy(&out).into_owned();
-    let values = |key: &str| -> Vec<f64> {
-        out.lines().filter_map(|line| line.strip_prefix(key)?.parse().ok()).collect()
-    };
+    let values =
+        |key: &str| -> Vec<f64> { out.lines().filter_map(|line| line.strip_prefix(key)?.parse().ok()).collect() };
     let peaks = values("lavfi.r128.true_peak=");
-    let loudness = *values("lavfi.r128.I=").last().unwrap_or_else(|| panic!("{}: no loudness: {out}", path.display()));
+    let loudness =
+        *values("lavfi.r128.I=").last().unwrap_or_else(|| panic!("{}: no loudness: {out}", path.display()));
     // A ratio, the highest so far.
     (loudness, 20.0 * peaks.last().expect("a true peak").log10())
 }
@@ -88,7 +89,8 @@ fn stated_gain_polarity_and_place_are_what_was_applied() {
         // Between the fades.
         let inside = 1000..packed[0].len() - 1000;
         let (a, b) = (&rendered[0][inside.clone()], &packed[0][inside]);
-        let product = |x: &[i32], y: &[i32]| x.iter().zip(y).map(|(x, y)| f64::from(*x) * f64::from(*y)).sum::<f64>();
+        let product =
+            |x: &[i32], y: &[i32]| x.iter().zip(y).map(|(x, y)| f64::from(*x) * f64::from(*y)).sum::<f64>();
         let ratio = product(a, b) / product(a, a);
         let stated = take["gain_dB"].as_f64().unwrap();
         assert!(ratio < 0.0 && take["turned"] == true, "{name}: one triode and a follower invert");
@@ -165,7 +167,8 @@ fn send_tells_nothing_of_what_the_letters_stand_for() {
     write_wav(&folder.path("my secret tune.wav"), 48_000, &music(48_000, 1.0, 2));
     let key = make(&folder, &["--play", "my secret tune.wav", "--with-dry", "--wav", "--into", "pack"]);
     let send = folder.path("pack/send");
-    let (mut sizes, mut telling) = (Vec::new(), vec!["12au7", "12bh7a", "bypass", "secret", "demo", "piano", "triode"]);
+    let (mut sizes, mut telling) =
+        (Vec::new(), vec!["12au7", "12bh7a", "bypass", "secret", "demo", "piano", "triode"]);
     telling.push(key["nonce"].as_str().unwrap());
     for path in files(&folder.path("pack")) {
         let modified = path.metadata().unwrap().modified().unwrap();
@@ -200,7 +203,9 @@ fn send_tells_nothing_of_what_the_letters_stand_for() {
         assert_eq!((bytes[4], bytes[4 + 4 + 34]), (0, 0x81), "{}", file.display());
     }
     let maker = std::fs::read_to_string(folder.path("pack/keep/maker.txt")).unwrap();
-    for said in ["12AU7, bypass in", "the recording itself", "gain -", "polarity turned", "at 20 kHz", "my secret tune.wav"] {
+    for said in
+        ["12AU7, bypass in", "the recording itself", "gain -", "polarity turned", "at 20 kHz", "my secret tune.wav"]
+    {
         assert!(maker.contains(said), "maker.txt does not say \"{said}\":\n{maker}");
     }
 }
@@ -239,12 +244,14 @@ fn the_same_seed_gives_the_same_bytes_and_another_deals_anew() {
 fn the_passage_is_the_one_asked_for() {
     let folder = folder(STAGE);
     write_wav(&folder.path("take.wav"), 48_000, &music(48_000, 4.0, 1));
-    let asked = ["--play", "take.wav", "--from", "1.25", "--length", "0.75", "--with-dry", "--wav", "--into", "pack"];
+    let asked =
+        ["--play", "take.wav", "--from", "1.25", "--length", "0.75", "--with-dry", "--wav", "--into", "pack"];
     let key = make(&folder, &asked);
     assert_eq!(key["recordings"][0]["from_seconds"], 1.25);
     assert_eq!(key["recordings"][0]["frames"], 36_000);
     let dry = take(&key, 1, None);
-    let packed = read_wav(&folder.path("pack/send/takes").join(dry["file"].as_str().unwrap()).with_extension("wav"));
+    let packed =
+        read_wav(&folder.path("pack/send/takes").join(dry["file"].as_str().unwrap()).with_extension("wav"));
     let recorded = read_wav(&folder.path("take.wav"));
     let factor = 10_f64.powf(dry["gain_dB"].as_f64().unwrap() / 20.0);
     let left: Vec<f64> =
@@ -316,4 +323,22 @@ fn trials_are_planned_exactly() {
     let run = folder.run(&["listen", "plan", "--effect", "0.7", "--power", "0.8"]);
     assert!(run.stdout.starts_with("37 trials, of which 24 must be right"), "{}", run.stdout);
     assert!(folder.refused(&["listen", "plan", "--effect", "0.501", "--power", "0.9"]).contains("2000 trials"));
+}
+
+#[test]
+fn compare_makes_a_pack_beside_the_report_and_links_it() {
+    let folder = folder(&stage_with("[compare]\n\"gain.bypass.engaged\" = [true, false]\n"));
+    write_wav(&folder.path("take.wav"), 48_000, &music(48_000, 1.0, 1));
+    let run = folder.run(&["compare", "stage.toml", "--play", "take.wav", "--into", "out", "--pack"]);
+    assert_eq!(run.code, Some(0), "{}", run.stderr);
+    assert!(run.stdout.contains("send pack/send, keep pack/keep"), "{}", run.stdout);
+    let page = std::fs::read_to_string(folder.path("out/report.html")).unwrap();
+    assert!(page.contains("href=\"pack/send/index.html\""), "the report does not link the pack");
+    assert!(folder.path("out/pack/send/index.html").is_file());
+    // The pack is the one that `listen pack` makes.
+    make(&folder, &["--play", "take.wav", "--into", "alone"]);
+    for name in ["send/index.html", "send/sound-1.js", "keep/key.json", "keep/maker.txt"] {
+        let read = |into: &str| std::fs::read(folder.path(into).join(name)).unwrap();
+        assert!(read("out/pack") == read("alone"), "{name} differs");
+    }
 }

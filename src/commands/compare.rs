@@ -8,6 +8,7 @@ use super::csv_file::CsvFile;
 use crate::audio_files::{OutputPlan, Recording};
 use crate::failure::{Failure, Outcome};
 use crate::figures::{Asked, AskedTone, Figures, gather, provenance, recording};
+use crate::listening::{INDEX, PackJob};
 use crate::plan::{self, ComparePlan, LevelUnit};
 use crate::profile::Profile;
 use crate::rendering::{self, Job};
@@ -18,6 +19,8 @@ use crate::{report, show, terminal};
 pub const REPORT: &str = "report.json";
 /// The same in a few lines of text.
 const SUMMARY: &str = "summary.txt";
+/// The listening pack's folder.
+const PACK: &str = "pack";
 /// The bench sheet's meter, Ω: what nearly every digital one has.
 const METER: f64 = 10e6;
 /// Tones of the comparison, Hz.
@@ -47,6 +50,7 @@ pub fn run(plan: &ComparePlan) -> Result<Outcome, Failure> {
         plots: plan.plots,
         levels: plan.levels,
         sound: &plan.sound,
+        pack: plan.pack.as_ref(),
     };
     comparison.run(plan.figures)
 }
@@ -77,6 +81,8 @@ pub struct Comparison<'a> {
     pub levels: LevelUnit,
     /// How sound is rendered.
     pub sound: &'a plan::Sound,
+    /// How a listening pack is made; none makes none.
+    pub pack: Option<&'a plan::PackOptions>,
 }
 
 impl Comparison<'_> {
@@ -92,6 +98,9 @@ impl Comparison<'_> {
             files.extend(report::plot_files(self.file.configurations.len(), self.recordings.len()));
         }
         files.extend(self.extras.iter().map(|(name, _)| PathBuf::from(name)));
+        let make_pack = |options| PackJob::new(self.file, self.recordings, options, super::kernel());
+        let pack = self.pack.map(make_pack).transpose()?;
+        files.extend(pack.iter().flat_map(PackJob::files).map(|file| Path::new(PACK).join(file)));
         let outputs = OutputPlan::check(&self.into.folder, self.into.replace, &files, self.inputs)?;
         let targets: Vec<PathBuf> = outputs.targets().collect();
         let csv = CsvFile::check(self.csv, self.into.replace, self.inputs, &targets)?;
@@ -99,8 +108,15 @@ impl Comparison<'_> {
 
         let folder = outputs.create()?;
         let (mut staged, renders) = job.run(&folder)?;
-        let warnings = rendering::warnings(&renders);
-        let tables = summary(&figures, &show::renders(&renders), self.levels);
+        let mut warnings = rendering::warnings(&renders);
+        let mut tables = summary(&figures, &show::renders(&renders), self.levels);
+        if let Some(pack) = pack {
+            let (files, made) = pack.run(&folder, Path::new(PACK))?;
+            staged.extend(files);
+            warnings.extend(made.notes);
+            tables.push(format!("Listening pack: send {PACK}/send, keep {PACK}/keep\n"));
+            figures.listening_pack = Some(format!("{PACK}/{INDEX}"));
+        }
         figures.renders = Some(renders);
         figures.recordings = Some(self.recordings.iter().map(recording::of).collect::<Result<_, _>>()?);
         figures.provenance = Some(provenance::of(self.file, self.options()));

@@ -39,6 +39,7 @@ pub fn run(plan: &DemoPlan) -> Result<Outcome, Failure> {
         plots: plan.plots,
         levels: LevelUnit::default(),
         sound: &Sound::default(),
+        pack: None,
     };
     comparison.run(plan.figures)
 }

@@ -36,7 +36,9 @@ fn text(tally: &Tally) -> String {
         text.push_str(&about(comparison));
     }
     if tally.broken_off > 0 {
-        text.push_str(&format!("\n{} runs were broken off and count nowhere.\n", tally.broken_off));
+        let runs =
+            if tally.broken_off == 1 { "1 run was".to_owned() } else { format!("{} runs were", tally.broken_off) };
+        text.push_str(&format!("\n{runs} broken off and count nowhere.\n"));
     }
     if tally.comparisons.len() > 1 {
         text.push('\n');

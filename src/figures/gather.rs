@@ -66,7 +66,16 @@ pub fn gather(file: &StageFile, asked: &Asked) -> Result<Figures, Failure> {
     let configurations = configurations?;
     let undecided = undecided::of(&configurations);
     let (schema, title) = (SCHEMA, file.title.clone());
-    Ok(Figures { schema, title, configurations, undecided, renders: None, recordings: None, provenance: None })
+    Ok(Figures {
+        schema,
+        title,
+        configurations,
+        undecided,
+        renders: None,
+        listening_pack: None,
+        recordings: None,
+        provenance: None,
+    })
 }
 
 fn one(configuration: &Configuration, asked: &Asked) -> Result<ConfigurationFigures, Failure> {

@@ -56,6 +56,9 @@ pub struct Figures {
     /// Rendered files, where there are any.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub renders: Option<Vec<RenderFigures>>,
+    /// The page of the listening pack below the output folder, where one was made.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub listening_pack: Option<String>,
     /// What was played, where a page is to be drawn.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub recordings: Option<Vec<RecordingFigures>>,

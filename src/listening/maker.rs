@@ -20,6 +20,9 @@ nothing. Answers carry a chain of hashes: it shows changes made by accident or i
 editor, and proves no more than that.
 ";
 
+/// DC below this is none: it lies under half a step of 24 bit, −150.5 dBFS.
+const LEAST_DC: f64 = -150.0;
+
 /// The text.
 pub fn text(key: &Key, seal: &str, seed: u64, notes: &[String]) -> String {
     let mut text = format!("{HEAD}\npack   {}\nseal   {seal}\nseed   {seed}\n", key.pack);
@@ -59,7 +62,10 @@ fn about(recording: &KeyRecording) -> String {
 
 fn about_take(take: &KeyTake, loudest: f64) -> String {
     let turned = if take.turned { "turned around: the stage inverts" } else { "as it came" };
-    let dc = |dc: Option<f64>| dc.map_or_else(|| "none".to_owned(), |dc| format!("{dc:.1} dBFS"));
+    let dc = |dc: Option<f64>| match dc {
+        Some(dc) if dc > LEAST_DC => format!("{dc:.1} dBFS"),
+        _ => "none".to_owned(),
+    };
     let mut text = format!(
         "\n  {}  {}\n     gain {:.2} dB: from {:.2} LUFS, {:.2} dBTP to {:.2} LUFS, {:.2} dBTP\n     polarity {turned}; \
          DC taken out {}, left {}\n",

@@ -46,6 +46,7 @@ fn hundredths(value: f64, round: fn(f64) -> f64) -> i64 {
 }
 
 #[cfg(test)]
+#[allow(clippy::disallowed_methods, reason = "test signals need not be the same on every CPU")]
 mod tests {
     use super::*;
 

@@ -21,6 +21,6 @@ mod statistics;
 mod tally;
 mod trials;
 
-pub use pack::{PackFigures, PackJob};
+pub use pack::{INDEX, PackFigures, PackJob};
 pub use tally::{Comparison, Counts, Tally, tally};
 pub use trials::plan_trials;

@@ -34,7 +34,8 @@ const MODIFIED_SECONDS: u64 = 946_684_800;
 
 const KEY: &str = "keep/key.json";
 const MAKER: &str = "keep/maker.txt";
-const INDEX: &str = "send/index.html";
+/// The page, below the pack's folder.
+pub const INDEX: &str = "send/index.html";
 
 /// A pack that can be made.
 pub struct PackJob<'a> {

@@ -29,6 +29,8 @@ pub struct Page {
     doubts: Vec<String>,
     trusted: bool,
     plays: Vec<Play>,
+    /// The address of the listening pack's page.
+    listening_pack: Option<String>,
     /// Pictures in which configurations stand together, by heading.
     together: Vec<Panel>,
     sections: Vec<Section>,
@@ -113,6 +115,7 @@ impl Page {
             doubts: glance::doubts(document, &letters),
             trusted: is_trusted(all),
             plays: plays(document, &lettered),
+            listening_pack: document.figures.listening_pack.as_deref().map(|page| percent_encoded(page, "/")),
             together: together(document, &lettered),
             sections: lettered.iter().map(|one| Section::of(document, *one)).collect(),
             provenance: document.figures.provenance.as_ref().map(provenance),

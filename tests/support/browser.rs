@@ -65,17 +65,12 @@ impl Browser {
         let mut args: Vec<String> = FLAGS.iter().map(|&flag| flag.to_owned()).collect();
         args.push(format!("--user-data-dir={}", browser.folder.path().join("profile").display()));
         let options = json!({ "args": args });
-<<<<<<< HEAD
-        let wanted =
-            json!({"capabilities": {"alwaysMatch": {"browserName": "chrome", "goog:chromeOptions": options}}});
-=======
         let wanted = json!({"capabilities": {"alwaysMatch": {
             "browserName": "chrome",
             "goog:chromeOptions": options,
             "goog:loggingPrefs": {"browser": "ALL"},
             "unhandledPromptBehavior": "accept",
         }}});
->>>>>>> 64031f5 (Encode FLAC in whole numbers; test packs against flac, ffmpeg and a real browser)
         let session = browser.post("", &wanted);
         let id = session["sessionId"].as_str().unwrap_or_else(|| {
             panic!("Chromium does not start: {session}; tools/run-tests installs it (Debian: chromium)")

@@ -1,5 +1,6 @@
 //! Recordings and packs for the listening tests.
 #![allow(dead_code)]
+#![allow(clippy::disallowed_methods, reason = "test signals need not be the same on every CPU")]
 
 use std::path::{Path, PathBuf};
 use std::process::Command;
@@ -96,11 +97,7 @@ pub fn outside(program: &str, arguments: &[&str]) -> Vec<u8> {
         .args(arguments)
         .output()
         .unwrap_or_else(|error| panic!("{program} does not start ({error}): tools/run-tests installs it"));
-    assert!(
-        output.status.success(),
-        "{program} {arguments:?}: {}",
-        String::from_utf8_lossy(&output.stderr)
-    );
+    assert!(output.status.success(), "{program} {arguments:?}: {}", String::from_utf8_lossy(&output.stderr));
     output.stdout
 }
 

@@ -121,7 +121,10 @@ fn best_parameter(errors: &[u64]) -> (u32, u64) {
         zeros + errors.len() as u64 * (u64::from(parameter) + 1)
     };
     let candidates = near.saturating_sub(1)..=near;
-    candidates.map(|parameter| (bits(parameter), parameter)).min().map_or((0, u64::MAX), |(bits, parameter)| (parameter, bits))
+    candidates
+        .map(|parameter| (bits(parameter), parameter))
+        .min()
+        .map_or((0, u64::MAX), |(bits, parameter)| (parameter, bits))
 }
 
 fn put_partitions(bits: &mut Bits, errors: &[u64], order: usize, parameters: &[u32]) {
@@ -152,7 +155,9 @@ mod tests {
         };
         let noise: Vec<i64> = (0..4096).map(|_| next()).collect();
         let ramp: Vec<i64> = (0..1000).map(|k| 7 * k).collect();
-        for (samples, fixed) in [(vec![5; 4096], false), (cubic, true), (noise, false), (ramp, true), (vec![1, 2], true)] {
+        for (samples, fixed) in
+            [(vec![5; 4096], false), (cubic, true), (noise, false), (ramp, true), (vec![1, 2], true)]
+        {
             let subframe = Subframe::of(&samples, 24);
             assert_eq!(matches!(subframe.way, Way::Fixed { .. }), fixed);
             let mut bits = Bits::default();

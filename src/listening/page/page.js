@@ -206,6 +206,7 @@
     ["way-beside", "way-which", "save", ...[...id("recordings").children]].forEach((button) => {
       (button instanceof HTMLElement ? button : id(button)).disabled = locked;
     });
+    show("answers", !locked);
     show("which-before", !locked);
     show("which-during", locked);
   }
