@@ -69,8 +69,10 @@ fn recovered(tube: &Section, points: &[CurvePoint], family: Family) -> f64 {
 
 #[test]
 fn two_hundred_noisy_points_give_the_tube_back() {
-    let own =
-        library::names().map(|name| (name.to_owned(), library::find(name).unwrap().section, Family::TwoSection));
+    let own = library::names().map(|name| {
+        let tube = library::find(name).unwrap().section;
+        (name.to_owned(), tube, Family::of(&tube.law))
+    });
     let measured = measured_12ax7();
     let published = measured.iter().map(|&tube| ("Dempwolf & Zölzer".to_owned(), tube, Family::TwoSection));
     let same =
@@ -78,10 +80,13 @@ fn two_hundred_noisy_points_give_the_tube_back() {
     let cards = koren_cards().into_iter().map(|tube| ("Koren, own law".to_owned(), tube, Family::Koren));
     let mut missed = Vec::new();
     for (k, (name, tube, family)) in own.chain(published).chain(same).chain(cards).enumerate() {
-        let error = recovered(&tube, &noisy(&tube, 200, 100 + k as u64), family);
-        println!("{name}: 95 % within {error:.2} %");
-        if error >= 1.5 {
-            missed.push((name, error));
+        // The middle of three draws, so that no single draw decides.
+        let mut draws =
+            [0, 1, 2].map(|draw| recovered(&tube, &noisy(&tube, 200, 100 + 3 * k as u64 + draw), family));
+        draws.sort_by(f64::total_cmp);
+        println!("{name}: 95 % within {:.2} %, {:.2} % and {:.2} %", draws[0], draws[1], draws[2]);
+        if draws[1] >= 1.5 {
+            missed.push((name, draws));
         }
     }
     assert!(missed.is_empty(), "{missed:?}");

@@ -52,7 +52,7 @@ fn two_section_priors() -> Vec<Prior> {
     vec![
         positive("G", 1e-5, 0.5),
         positive("mu", 3.0, 250.0),
-        Prior { name: "gamma", low: 1.0, high: 1.7, centre: 1.4, spread: 0.15 },
+        Prior { name: "gamma", low: 1.0, high: 1.7, centre: 1.35, spread: 0.2 },
         Prior { name: "C", low: ln(1.0 / 200.0), high: ln(0.5), centre: ln(1.0 / 18.0), spread: 0.5 },
         Prior { name: "share", low: 0.0, high: 0.6, centre: 0.2, spread: 0.2 },
         Prior { name: "mu_ratio", low: 0.1, high: 0.95, centre: 0.5, spread: 0.2 },

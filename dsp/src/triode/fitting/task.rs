@@ -77,7 +77,8 @@ impl Task {
         let mut random = Random::new(seed);
         let drawn = self.drawn(&mut random);
         let base = drawn.one_section();
-        let starts: Vec<_> = (0..MEMBER_STARTS).map(|_| drawn.random_start(&base.at, &mut random)).collect();
+        let mut starts: Vec<_> = (0..MEMBER_STARTS).map(|_| drawn.random_start(&base.at, &mut random)).collect();
+        starts.extend(drawn.starts(&base.at).into_iter().step_by(4));
         let found = starts.iter().map(|start| drawn.descend(start, &drawn.bounds()));
         drawn.solution(&best(found))
     }
