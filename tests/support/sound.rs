@@ -76,7 +76,7 @@ pub fn noise(frames: usize, seed: u32, peak: f64) -> Vec<f64> {
 pub fn sines(frames: usize, period: f64, parts: &[(f64, f64)]) -> Vec<f64> {
     let at = |frame: usize| {
         let turn = std::f64::consts::TAU * frame as f64 / period;
-        parts.iter().map(|(cycles, peak)| peak * (cycles * turn).sin()).sum()
+        parts.iter().map(|(cycles, peak)| peak * libm::sin(cycles * turn)).sum()
     };
     (0..frames).map(at).collect()
 }
