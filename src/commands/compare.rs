@@ -157,7 +157,6 @@ impl Comparison<'_> {
             play_peak: Some(super::true_peak(self.recordings)?),
             meter_ohms: Some(METER),
             page: true,
-            ..Asked::default()
         })
     }
 

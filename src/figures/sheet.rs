@@ -16,12 +16,15 @@ const BAND: (f64, f64) = (5.0, 95.0);
 const ACROSS: [&str; 4] =
     ["supply.resistance", "gain.cathode_resistor", "follower.bias_resistor", "follower.tail_resistor"];
 
+/// Volts of one build; `None` where it has no such place.
+type Readings = Vec<Option<f64>>;
+
 /// The sheet of a stage for a meter whose nominal readings are `meter`.
 pub fn of(stage: &Stage, network: &Network, point: &OperatingPoint, meter: &MeterFigures) -> BenchSheetFigures {
     let scatter = Scatter { one_bottle: one_bottle(stage), ..Scatter::FIVE_PERCENT };
     let nodes: Vec<Node> =
         meter.readings.iter().filter_map(|r| Node::ALL.into_iter().find(|n| n.name() == r.node)).collect();
-    let builds: Vec<(Vec<Option<f64>>, Vec<Option<f64>>)> = (0..BUILDS)
+    let builds: Vec<(Readings, Readings)> = (0..BUILDS)
         .into_par_iter()
         .map(|index| {
             let build = scatter.build(network, SEED, index);

@@ -3,7 +3,7 @@
 //! [`pack`] renders an excerpt through every configuration ([`passage`]), puts polarity, DC, loudness and ends right
 //! ([`correction`]), writes it as FLAC ([`flac`]) under letters that tell nothing ([`secret`]), and sets the page
 //! beside it ([`page`]). What the letters stand for is in the key alone ([`key`]). [`answers`] reads what comes back,
-//! [`tally`] counts it, [`statistics`] says what chance would do.
+//! [`mod@tally`] counts it, [`statistics`] says what chance would do.
 
 mod answers;
 mod conclusion;

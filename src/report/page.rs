@@ -213,7 +213,7 @@ fn is_trusted(configurations: &[ConfigurationFigures]) -> bool {
 /// "A 3.1 Hz to 92 kHz".
 fn edges(one: &Lettered<'_>) -> Option<String> {
     let sweep = one.figures.frequency_sweep.as_ref()?;
-    let edge = |frequency: Option<f64>| frequency.map_or_else(|| "none".to_owned(), |f| words::frequency(f));
+    let edge = |frequency: Option<f64>| frequency.map_or_else(|| "none".to_owned(), words::frequency);
     Some(format!("{}\u{a0} {} to {}", one.letter, edge(sweep.low), edge(sweep.high)))
 }
 

@@ -141,7 +141,7 @@ impl Coupled {
     pub fn gain(&self, tube: &Arc<TubeType>) -> f64 {
         let network = self.network(tube);
         let point = OperatingPoint::solve(&network, None).unwrap();
-        SmallSignal::new(&network, &point).at(1000.0).unwrap().gain.norm()
+        platewright_dsp::portable::magnitude(SmallSignal::new(&network, &point).at(1000.0).unwrap().gain)
     }
 
     /// THD_F at 1 kHz where the output is `output_rms` volts, found by the secant rule on the input level.

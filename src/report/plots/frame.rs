@@ -108,12 +108,12 @@ impl Frame {
         let mut before: Option<(f64, f64)> = None;
         for value in values {
             let now = value.map(|value| self.place(value));
-            if let (Some(a), Some(b)) = (before, now) {
-                if let Some((a, b)) = self.clipped(a, b) {
-                    match pieces.last_mut() {
-                        Some(piece) if piece.last() == Some(&a) => piece.push(b),
-                        _ => pieces.push(vec![a, b]),
-                    }
+            if let (Some(a), Some(b)) = (before, now)
+                && let Some((a, b)) = self.clipped(a, b)
+            {
+                match pieces.last_mut() {
+                    Some(piece) if piece.last() == Some(&a) => piece.push(b),
+                    _ => pieces.push(vec![a, b]),
                 }
             }
             before = now;

@@ -107,7 +107,7 @@ impl Sheet<'_> {
 
     fn supply(&mut self, follows: bool) {
         self.pen.terminal((150.0, RAIL));
-        let volts = self.number("supply.voltage").map_or_else(String::new, |v| words::bench_volts(v));
+        let volts = self.number("supply.voltage").map_or_else(String::new, words::bench_volts);
         self.pen.text("value", (140.0, RAIL + 4.0), Anchor::End, &volts);
         let text = ((190.0, RAIL - 14.0), Anchor::Middle, self.ohms("supply.resistance"));
         self.part("supply.resistance", text, &|pen| pen.resistor_across(153.0, 227.0, RAIL));
