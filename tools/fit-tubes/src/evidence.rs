@@ -136,7 +136,7 @@ fn chart(tables: &Tables, name: &str) -> Option<Gathered> {
     let kept_out = seeded_third(rows.len(), name);
     let row = |(row, kept_out): (&&ChartRow, bool)| {
         let note = note(&row.provenance);
-        let own = (CHART_ERROR * row.gain).hypot(ROUNDING);
+        let own = libm::hypot(CHART_ERROR * row.gain, ROUNDING);
         let error = own * if note.is_some() { DOUBTFUL } else { 1.0 };
         let stage = Stage {
             supply: row.supply_volts,
@@ -265,7 +265,7 @@ fn curves(tables: &Tables, entry: &TypeEntry, name: &str) -> Option<Gathered> {
     let inflation = (used.len() as f64 / CURVE_COUNT).sqrt().max(1.0);
     let row = |row: &&CurveRow| {
         let (vpk, vgk, published) = (row.plate_volts, row.grid_volts, row.plate_mA * 1e-3);
-        let measured = (CURVE_ERROR * published).hypot(CURVE_FLOOR * full_scale);
+        let measured = libm::hypot(CURVE_ERROR * published, CURVE_FLOOR * full_scale);
         let error = entry.curve_reading_error.unwrap_or(measured);
         let condition = Condition::Bias { vpk, vgk };
         let figure = Figure { condition, quantity: Quantity::PlateCurrent, published, error: error * inflation };
