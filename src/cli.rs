@@ -74,7 +74,7 @@ pub struct BiasArguments {
     #[arg(value_name = "STAGE")]
     pub stage: PathBuf,
     /// Solve again for each node with a meter of this resistance attached, such as 10M
-    #[arg(long, value_name = "OHMS")]
+    #[arg(long, value_name = "OHMS", allow_negative_numbers = true)]
     pub meter: Option<String>,
     /// Print a bench sheet for the stage once built, with the cautions
     #[arg(long, conflicts_with = "json")]
@@ -115,7 +115,7 @@ pub struct MeasureArguments {
     #[arg(long = "play", value_name = "FILE")]
     pub play: Vec<PathBuf>,
     /// Level of everything that does not name its own, V rms at the input [default: a quarter of source.full_scale]
-    #[arg(long, value_name = "V")]
+    #[arg(long, value_name = "V", allow_negative_numbers = true)]
     pub level: Option<String>,
     /// Write every figure to a CSV file, one a row; one that exists is refused
     #[arg(long, value_name = "FILE")]
@@ -195,7 +195,7 @@ pub struct CompareArguments {
     #[arg(long)]
     pub pack: bool,
     /// Level of the figures, V rms at the input [default: a quarter of source.full_scale]
-    #[arg(long, value_name = "V")]
+    #[arg(long, value_name = "V", allow_negative_numbers = true)]
     pub level: Option<String>,
     /// A profile file: rank the configurations by how far they miss the harmonics it wants
     #[arg(long, value_name = "FILE")]
@@ -295,7 +295,7 @@ pub struct SoundArguments {
     #[arg(long, value_name = "HZ")]
     pub rate: Option<String>,
     /// Go on after the end of the recording until the stage has come to rest, in seconds
-    #[arg(long, value_name = "SECONDS")]
+    #[arg(long, value_name = "SECONDS", allow_negative_numbers = true)]
     pub tail: Option<String>,
     /// Add triangular dither to 16-bit files
     #[arg(long)]
@@ -304,7 +304,7 @@ pub struct SoundArguments {
     #[arg(long, value_name = "DB", allow_hyphen_values = true)]
     pub drive: Option<String>,
     /// V rms at the output written as 0 dBFS [default: output.full_scale, or the loudest peak at −1 dBFS]
-    #[arg(long, value_name = "V")]
+    #[arg(long, value_name = "V", allow_negative_numbers = true)]
     pub full_scale: Option<String>,
 }
 

@@ -125,7 +125,7 @@ impl Failure {
 }
 
 fn two_lines(problem: &str, remedy: &str) -> String {
-    format!("error: {problem}\n  help: {remedy}")
+    if remedy.is_empty() { format!("error: {problem}") } else { format!("error: {problem}\n  help: {remedy}") }
 }
 
 impl fmt::Display for WorkError {

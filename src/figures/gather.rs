@@ -11,6 +11,7 @@ use super::{
 };
 use crate::failure::{Failure, WorkError};
 use crate::profile::Profile;
+use crate::rendering::Progress;
 use crate::stage_file::{Configuration, StageFile};
 
 /// What is asked beside the operating point.
@@ -61,8 +62,13 @@ const USUAL_LEVEL: f64 = 0.25;
 /// # Errors
 /// [`WorkError`] where a configuration settles at no operating point.
 pub fn gather(file: &StageFile, asked: &Asked) -> Result<Figures, Failure> {
-    let configurations: Result<Vec<_>, Failure> =
-        file.configurations.par_iter().map(|configuration| one(configuration, asked)).collect();
+    let progress = Progress::new("measuring", file.configurations.len() as u64);
+    let configurations: Result<Vec<_>, Failure> = file
+        .configurations
+        .par_iter()
+        .map(|configuration| one(configuration, asked).inspect(|_| progress.add(1)))
+        .collect();
+    progress.done();
     let configurations = configurations?;
     let undecided = undecided::of(&configurations);
     let (schema, title) = (SCHEMA, file.title.clone());

@@ -6,7 +6,7 @@ use platewright_dsp::analysis::{
     BeyondLaw, Meter, OperatingPoint, TubePoint, TubeStress, beyond_law_at_rest, cold_volts, tube_stresses,
     tube_type,
 };
-use platewright_dsp::circuit::{Network, Node, Role, Stage};
+use platewright_dsp::circuit::{Coupling, Network, Node, Role, Stage};
 
 use super::{
     MeterFigures, OperatingPointFigures, PartFigures, RatingFigures, ReadingFigures, TubeFigures, WarningFigures,
@@ -130,6 +130,7 @@ fn part_rating(part: &str, limit: &str, unit: &str, asked: f64, allowed: f64) ->
 fn warnings(stage: &Stage, point: &OperatingPoint, ratings: &[RatingFigures]) -> Vec<WarningFigures> {
     let mut exceeded: Vec<WarningFigures> = ratings.iter().filter_map(exceeded).collect();
     exceeded.sort_by(|a, b| b.used_percent.unwrap_or(0.0).total_cmp(&a.used_percent.unwrap_or(0.0)));
+    exceeded.extend(cold_grid(stage));
     exceeded.extend(beyond_law_at_rest(stage, point).iter().map(beyond_law));
     exceeded
 }
@@ -143,10 +144,12 @@ fn exceeded(rating: &RatingFigures) -> Option<WarningFigures> {
         limit: rating.limit.clone(),
         used_percent: Some(used),
         text: format!(
-            "{}: {limit} {} exceeds the stated {} ({used:.0} %)",
+            "{}: {limit} {} exceeds the stated {} ({used:.0} %){}",
             rating.part,
             with_unit(rating.asked, &rating.unit),
             with_unit(allowed, &rating.unit),
+            // The heater's own supply may be lifted, which the stage file cannot say yet.
+            if rating.limit == "heater_cathode_voltage" { ", with the heater at ground" } else { "" },
         ),
         why: Why::new(),
     })
@@ -161,6 +164,19 @@ fn with_unit(value: f64, unit: &str) -> String {
 }
 
 /// The warning of a law used beyond its reach.
+/// A direct-coupled follower's grid rises with the gain tube's plate to the whole supply before its cathode emits.
+/// Common practice, no source.
+fn cold_grid(stage: &Stage) -> Option<WarningFigures> {
+    let follower = stage.follower.as_ref()?;
+    let text = format!(
+        "follower: while the tubes are cold its grid stands {:.0} V over its cathode (no limit stated) and may arc: clamp \
+         grid to cathode, or bring the supply up after the heaters",
+        stage.supply.voltage
+    );
+    let direct = matches!(follower.coupling, Coupling::Direct { .. });
+    direct.then(|| WarningFigures::note(Role::Follower.name(), "grid_cathode_cold", text))
+}
+
 fn beyond_law(beyond: &BeyondLaw) -> WarningFigures {
     let part = beyond.role.name();
     WarningFigures::note(part, "law", format!("{part}: {beyond}"))

@@ -3,29 +3,55 @@
 use crate::figures::{ConfigurationFigures, UndecidedFigures, WarningFigures};
 use crate::terminal::plain;
 
-/// One line a warning, with the configurations that share it; empty where there is none.
+/// One line a part and limit, with the configurations that share it; empty where there is none.
 pub fn warnings(configurations: &[ConfigurationFigures], colour: bool) -> String {
-    let mut seen: Vec<(&WarningFigures, Vec<&str>)> = Vec::new();
+    let mut groups: Vec<Group<'_>> = Vec::new();
     for configuration in configurations {
-        for warning in configuration.warnings() {
-            match seen.iter_mut().find(|(other, _)| other.text == warning.text) {
-                Some((_, names)) => names.push(&configuration.name),
-                None => seen.push((warning, vec![&configuration.name])),
+        for warning in &configuration.operating_point.warnings {
+            match groups.iter_mut().find(|g| (&g.worst.part, &g.worst.limit) == (&warning.part, &warning.limit)) {
+                Some(group) => group.add(warning, &configuration.name),
+                None => groups.push(Group { worst: warning, names: vec![&configuration.name] }),
             }
         }
     }
     // Exceeded limits before everything else, the worst at the top.
-    seen.sort_by(|(a, _), (b, _)| b.used_percent.unwrap_or(0.0).total_cmp(&a.used_percent.unwrap_or(0.0)));
-    let all = configurations.len();
-    seen.iter().map(|(warning, names)| line(warning, names, all, colour)).collect()
+    groups.sort_by(|a, b| used(b.worst).total_cmp(&used(a.worst)));
+    groups.iter().map(|group| group.line(configurations.len(), colour)).collect()
 }
 
-fn line(warning: &WarningFigures, names: &[&str], all: usize, colour: bool) -> String {
-    let exceeded = warning.used_percent.is_some();
-    let (red, end) = if exceeded && colour { ("\u{1b}[1;31m", "\u{1b}[0m") } else { ("", "") };
-    let mark = if exceeded { "EXCEEDED" } else { "note" };
-    let whose = if names.len() == all { String::new() } else { format!("  [{}]", plain(&names.join("; "))) };
-    format!("{red}{mark}: {}{end}{whose}\n", plain(&warning.text))
+fn used(warning: &WarningFigures) -> f64 {
+    warning.used_percent.unwrap_or(0.0)
+}
+
+/// A limit of a part, in every configuration that warns of it.
+struct Group<'a> {
+    worst: &'a WarningFigures,
+    names: Vec<&'a str>,
+}
+
+/// Names that a line spells out; more are counted.
+const NAMES: usize = 4;
+
+impl<'a> Group<'a> {
+    fn add(&mut self, warning: &'a WarningFigures, name: &'a str) {
+        if used(warning) > used(self.worst) {
+            self.worst = warning;
+        }
+        self.names.push(name);
+    }
+
+    fn line(&self, all: usize, colour: bool) -> String {
+        let exceeded = self.worst.used_percent.is_some();
+        let (red, end) = if exceeded && colour { ("\u{1b}[1;31m", "\u{1b}[0m") } else { ("", "") };
+        let mark = if exceeded { "EXCEEDED" } else { "note" };
+        let whose = match self.names.len() {
+            1 if all == 1 => String::new(),
+            count if count == all => format!("\n  in all configurations, this the worst of {count}"),
+            count if count > NAMES => format!("\n  in {count} of {all} configurations, this the worst"),
+            _ => format!("\n  in {}", plain(&self.names.join("; "))),
+        };
+        format!("{red}{mark}: {}{end}{whose}\n", plain(&self.worst.text))
+    }
 }
 
 /// One line for each difference that the tube data do not settle; empty where there is none.
