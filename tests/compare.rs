@@ -70,7 +70,9 @@ fn exceeded_ratings_come_first_and_fail_a_strict_run() {
     assert_eq!(run.code, Some(3), "{}", run.stderr);
     let mut lines = run.stdout.lines();
     assert_eq!(lines.next(), Some("My first stage"));
-    let exceeded: Vec<&str> = lines.take_while(|line| line.starts_with("EXCEEDED")).collect();
+    // Below each limit stands which configurations exceed it.
+    let of_warnings = lines.take_while(|line| line.starts_with("EXCEEDED") || line.starts_with("  in "));
+    let exceeded: Vec<&str> = of_warnings.filter(|line| line.starts_with("EXCEEDED")).collect();
     assert!(exceeded.len() >= 2, "{}", run.stdout);
     assert!(exceeded[0].contains("gain.bypass: volts"), "the worst first: {exceeded:?}");
     assert!(exceeded.iter().any(|line| line.contains("gain.plate_resistor: watts")), "{exceeded:?}");

@@ -24,16 +24,22 @@ const PLACES: &[(&str, &[&str])] = &[
     ("frequency_sweep.points", &["frequency"]),
     ("imd", &["kind", "input_rms"]),
     ("headroom.thd", &["percent"]),
+    ("headroom.grid_current_of", &["tube"]),
+    ("headroom.cutoff_of", &["tube"]),
     ("profile", &["frequency"]),
     ("profile.harmonics", &["order", "want"]),
     ("undecided", &["order"]),
     ("renders", &["recording", "file"]),
 ];
 
+/// What a configuration holds beside its figures: its name, and what the page draws.
+const NO_FIGURES: [&str; 4] = ["name", "values", "curves", "bench_sheet"];
+
 /// Units by the end of a figure's name; the first that fits.
 const UNITS: &[(&str, &str)] = &[
     ("_dB", "dB"),
     ("_dBFS", "dBFS"),
+    ("_LUFS", "LUFS"),
     ("dBc", "dBc"),
     ("wanted", "dBc"),
     ("got", "dBc"),
@@ -111,7 +117,7 @@ fn rows(figures: &Value) -> Vec<Row> {
     let list = |key: &str| figures[key].as_array().into_iter().flatten().filter_map(Value::as_object);
     for configuration in list("configurations") {
         let place = Place { configuration: text(&configuration["name"]), ..Place::default() };
-        object(&place, configuration, &["name"], &mut rows);
+        object(&place, configuration, &NO_FIGURES, &mut rows);
     }
     for undecided in list("undecided") {
         let between: Vec<String> = undecided["between"].as_array().into_iter().flatten().map(text).collect();

@@ -7,8 +7,8 @@ use crate::terminal::plain;
 pub fn warnings(configurations: &[ConfigurationFigures], colour: bool) -> String {
     let mut groups: Vec<Group<'_>> = Vec::new();
     for configuration in configurations {
-        for warning in &configuration.operating_point.warnings {
-            match groups.iter_mut().find(|g| (&g.worst.part, &g.worst.limit) == (&warning.part, &warning.limit)) {
+        for warning in configuration.warnings() {
+            match groups.iter_mut().find(|group| group.holds(warning)) {
                 Some(group) => group.add(warning, &configuration.name),
                 None => groups.push(Group { worst: warning, names: vec![&configuration.name] }),
             }
@@ -33,11 +33,19 @@ struct Group<'a> {
 const NAMES: usize = 4;
 
 impl<'a> Group<'a> {
+    /// Whether a warning is of this limit; a note, which has no size, is of its own words alone.
+    fn holds(&self, warning: &WarningFigures) -> bool {
+        let limit = |w: &WarningFigures| (w.part.clone(), w.limit.clone(), w.used_percent.is_some());
+        limit(self.worst) == limit(warning) && (warning.used_percent.is_some() || self.worst.text == warning.text)
+    }
+
     fn add(&mut self, warning: &'a WarningFigures, name: &'a str) {
         if used(warning) > used(self.worst) {
             self.worst = warning;
         }
-        self.names.push(name);
+        if self.names.last() != Some(&name) {
+            self.names.push(name);
+        }
     }
 
     fn line(&self, all: usize, colour: bool) -> String {

@@ -66,7 +66,7 @@ fn tube_rules() {
         (own(("C = 3 }", "C = 3 }\nensemble = 5")), "`tube.ensemble` is a number where a list belongs"),
         (own(("[[tube]]", "[tube]")), "[[tube]]"),
         (own(("[[tube]]", &format!("{OWN}[[tube]]"))), "\"mine\" is there twice"),
-        (SMALL.replacen("12AX7", "12BH7", 1), "did you mean \"12BH7A\"?"),
+        (SMALL.replacen("12AX7", "12BH7B", 1), "did you mean \"12BH7A\"?"),
         (SMALL.replacen("12AX7", "lamp", 1), "known types: 12AX7, 12AT7, 12AU7"),
         (SMALL.replacen("\"12AX7\"", "12", 1), "`gain.tube` is a number where a text belongs"),
     ];
